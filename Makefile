@@ -1,0 +1,32 @@
+# make demo: sets everything up and runs the main job.   make test: sets everything up and passes the tests.
+PYTHON ?= python3
+VENV := .venv
+BIN := $(VENV)/bin
+READY := $(VENV)/.ready
+
+.PHONY: demo test lint format setup clean
+.DEFAULT_GOAL := help
+
+help:
+	@echo "make demo   set up and replay the Ostrel demo world (first run: a few minutes, most of it installing)"
+	@echo "make test   set up and run the tests"
+	@echo "make lint   format check, lint, types, import layers"
+
+$(READY): pyproject.toml config/constraints.txt
+	@echo "== setting up $(VENV) (pinned packages; once, about two minutes)"
+	@test -x $(BIN)/python || $(PYTHON) -m venv $(VENV)
+	@$(BIN)/python -m pip install --quiet --disable-pip-version-check --upgrade pip
+	@$(BIN)/python -m pip install --quiet --disable-pip-version-check -c config/constraints.txt -e ".[pipeline,notebook,test]"
+	@touch $(READY)
+
+setup: $(READY)
+
+lint: $(READY)
+	$(BIN)/ruff format --check .
+	$(BIN)/ruff check .
+	$(BIN)/mypy
+	$(BIN)/lint-imports
+
+format: $(READY)
+	$(BIN)/ruff format .
+	$(BIN)/ruff check --fix .

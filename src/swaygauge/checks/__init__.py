@@ -1,0 +1,1 @@
+"""Is a snapshot sound: measured facts, limits, rules, verdict."""

@@ -1,0 +1,130 @@
+"""The stages of one night. Each loads from the store, calls pure functions, and saves to the store.
+
+A stage reads what the stages before it staged for this night, and what was published for the nights before. Nothing
+becomes visible until ``publish`` moves all of it into place in one transaction.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from datetime import date
+
+import numpy as np
+
+from swaygauge.checks.profile import measure
+from swaygauge.checks.verdict import accept_anyway, judge, rebaseline, rebaseline_due
+from swaygauge.effective import advance, comparable_before, start_book
+from swaygauge.errors import InputError
+from swaygauge.night.compare import compare
+from swaygauge.night.history import History, history_of
+from swaygauge.night.naming import resolved
+from swaygauge.night.publish import publish
+from swaygauge.night.result import StageResult
+from swaygauge.night.scoring import score
+from swaygauge.night.work import Work
+from swaygauge.readers import read_links
+from swaygauge.readers.aliases import apply_aliases
+from swaygauge.readers.lists import read_names
+from swaygauge.readers.snapshot import make_snapshot
+from swaygauge.records import Ids, LinkBook, Profile, Snapshot, Verdict
+
+
+def _fetched_ids(work: Work, night: date, canonical: dict[str, str]) -> Ids | None:
+    file = work.fetch_list(night)
+    if file is None:
+        return None
+    names = read_names(file, normalise=work.settings.reader.normalise_hosts).names
+    ids = work.store.names(work.network).lookup([canonical.get(name, name) for name in names])
+    # a source that was fetched and was never in any snapshot has no id, and nothing that could be carried
+    return np.unique(ids[ids >= 0]).astype(np.int32)
+
+
+def ingest(work: Work, night: date) -> StageResult:
+    """File -> raw snapshot with persistent ids."""
+    path = work.found().nights.get(night)
+    if path is None:
+        raise InputError(
+            f"no snapshot for {night} in {work.folder.name}/: expected a file named like "
+            f"{work.settings.snapshots.pattern!r}. Put the file there, or name another night."
+        )
+    aliases = resolved(work, night)
+    raw = apply_aliases(read_links(path, work.settings.reader), aliases)
+    ids = work.store.names(work.network).intern(raw.names, night=night)
+    fetched = _fetched_ids(work, night, aliases.canonical)
+    snapshot = make_snapshot(night, raw, ids=ids, self_links=work.settings.reader.self_links, fetched=fetched)
+    work.store.stage_record(work.network, night, kind="raw", record=snapshot)
+    return StageResult(snapshot.origin.rows, f"{len(snapshot.source)} links from {snapshot.origin.file}")
+
+
+def _verdict(work: Work, history: History, snapshot: Snapshot, profile: Profile) -> Verdict:
+    verdict = judge(profile, work.settings.checks, fine_nights=history.fine_profiles)
+    if verdict.outcome == "hold":
+        if snapshot.night in work.accepted_by_hand():
+            return accept_anyway(verdict)
+        if rebaseline_due(verdict, history.held_snapshots(), snapshot, work.settings.checks):
+            return rebaseline(verdict)
+    return verdict
+
+
+def check(work: Work, night: date) -> StageResult:
+    """Raw snapshot -> profile -> verdict."""
+    history = history_of(work, night)
+    snapshot = work.store.record(Snapshot, work.network, night, kind="raw", staged=True)
+    book, known = history.book(), history.known()
+    profile = measure(snapshot, book, trailing=history.baseline_profiles, known_nodes=known["id"] if known else None)
+    verdict = _verdict(work, history, snapshot, profile)
+    work.store.stage_record(work.network, night, kind="profile", record=profile)
+    work.store.stage_record(work.network, night, kind="verdict", record=verdict)
+    return StageResult(len(verdict.results), verdict.outcome + "".join(f"; {reason}" for reason in verdict.reasons))
+
+
+def _known_now(night: date, known: dict[str, Ids] | None, book: LinkBook) -> dict[str, Ids]:
+    """Every node of any effective snapshot so far, with the night (ordinal) it was first there."""
+    ids = np.unique(np.concatenate([book.source[book.in_effect], book.target[book.in_effect]])).astype(np.int32)
+    first = np.full(len(ids), night.toordinal(), np.int32)
+    if known is None:
+        return {"id": ids, "first_night": first}
+    new = ~np.isin(ids, known["id"], assume_unique=True)
+    every = np.concatenate([known["id"], ids[new]])
+    order = np.argsort(every, kind="stable")
+    return {"id": every[order], "first_night": np.concatenate([known["first_night"], first[new]])[order]}
+
+
+def prepare(work: Work, night: date) -> StageResult:
+    """Raw snapshot + last effective one -> what is scored: links carried, waiting, gone."""
+    store, network = work.store, work.network
+    verdict = store.record(Verdict, network, night, kind="verdict", staged=True)
+    if verdict.outcome == "hold":
+        return StageResult(0, "held: nothing is scored")
+    snapshot = store.record(Snapshot, network, night, kind="raw", staged=True)
+    history = history_of(work, night)
+    before = history.book()
+    if before is None:
+        book = start_book(snapshot)
+        detail = "first night"
+    else:
+        book, changes, upkeep = advance(before, snapshot, verdict, options=work.settings.upkeep)
+        store.stage_record(network, night, kind="changes", record=changes)
+        store.stage_record(network, night, kind="upkeep", record=upkeep)
+        adjusted = comparable_before(before, changes)
+        if adjusted is not None:
+            store.stage_record(network, night, kind="adjusted", record=adjusted)
+        detail = f"{upkeep.carried_links} carried, {upkeep.waiting_links} waiting"
+    store.stage_record(network, night, kind="book", record=book)
+    store.stage_part(network, night, kind="known", columns=_known_now(night, history.known(), book))
+    return StageResult(int(book.in_effect.sum()), detail)
+
+
+STAGES: dict[str, Callable[[Work, date], StageResult]] = {
+    "ingest": ingest,
+    "check": check,
+    "prepare": prepare,
+    "score": score,
+    "compare": compare,
+    "publish": publish,
+}
+
+
+def run_stage(work: Work, night: date, stage: str) -> StageResult:
+    """One named stage of one night."""
+    return STAGES[stage](work, night)

@@ -4,7 +4,7 @@ VENV := .venv
 BIN := $(VENV)/bin
 READY := $(VENV)/.ready
 
-.PHONY: demo test lint format setup clean
+.PHONY: help demo test lint format setup coverage clean
 .DEFAULT_GOAL := help
 
 help:
@@ -15,8 +15,8 @@ help:
 $(READY): pyproject.toml config/constraints.txt
 	@echo "== setting up $(VENV) (pinned packages; once, about two minutes)"
 	@test -x $(BIN)/python || $(PYTHON) -m venv $(VENV)
-	@$(BIN)/python -m pip install --quiet --disable-pip-version-check --upgrade pip
-	@$(BIN)/python -m pip install --quiet --disable-pip-version-check -c config/constraints.txt -e ".[pipeline,notebook,test]"
+	@$(BIN)/python -m pip install -qq --disable-pip-version-check --upgrade pip
+	@$(BIN)/python -m pip install -qq --disable-pip-version-check -c config/constraints.txt -e ".[pipeline,desk,notebook,test]"
 	@touch $(READY)
 
 setup: $(READY)
@@ -30,3 +30,15 @@ lint: $(READY)
 format: $(READY)
 	$(BIN)/ruff format .
 	$(BIN)/ruff check --fix .
+
+demo: $(READY)
+	@$(BIN)/swaygauge demo ostrel
+
+test: $(READY)
+	$(BIN)/python -m pytest -q -n 2 --dist loadfile
+
+clean:
+	rm -rf $(VENV) workspace
+
+coverage: $(READY)
+	$(BIN)/python -m pytest -q -n 2 --dist loadfile --cov --cov-report=term

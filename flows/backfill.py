@@ -1,7 +1,6 @@
 """Backfill: a range of historical nights in date order, one task a night, resumable by running it again."""
 
-from __future__ import annotations
-
+# no postponed annotations here: a served run resolves the parameter types without this module's names
 from datetime import date
 from pathlib import Path
 

@@ -4,8 +4,7 @@ State decides what runs, not the schedule: a night that was missed, a file that 
 an acceptance that was added, are all found by comparing the snapshot folder with the catalog.
 """
 
-from __future__ import annotations
-
+# no postponed annotations here: a served run resolves the parameter types without this module's names
 from datetime import UTC, date, datetime
 from pathlib import Path
 

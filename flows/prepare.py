@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import logging
 import os
 from pathlib import Path
 
@@ -29,6 +28,5 @@ def prepare(workspace: Path) -> None:
     """Set what the person has not set. Call before prefect is first imported; a PREFECT_API_URL they set is used."""
     for key, value in QUIET.items():
         os.environ.setdefault(key, value)
-    logging.getLogger("great_expectations").setLevel(logging.WARNING)
     home = Path(os.environ.setdefault("PREFECT_HOME", str(workspace / ".prefect")))
     home.mkdir(parents=True, exist_ok=True)

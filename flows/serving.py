@@ -68,6 +68,7 @@ def serve_network(file: Path, say: Callable[[str], None]) -> None:
     plan = settings.schedule
     with local_server() as url:
         from prefect.client.schemas.objects import ConcurrencyLimitConfig, ConcurrencyLimitStrategy
+        from prefect.deployments.runner import EntrypointType
         from prefect.schedules import Cron
 
         from swaygauge.flows.nightly import nightly
@@ -79,4 +80,6 @@ def serve_network(file: Path, say: Callable[[str], None]) -> None:
             parameters={"config": str(file.resolve())},
             global_limit=ConcurrencyLimitConfig(limit=1, collision_strategy=ConcurrencyLimitStrategy.CANCEL_NEW),
             pause_on_shutdown=False,
+            # a run imports the installed package, wherever it was started
+            entrypoint_type=EntrypointType.MODULE_PATH,
         )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import functools
+import logging
 import os
 import warnings
 from collections.abc import Mapping, Sequence
@@ -12,6 +13,7 @@ from swaygauge.checks.rules import Rule
 from swaygauge.errors import RuleError
 from swaygauge.records import RuleResult
 
+CHATTY: Final = "great_expectations.data_context.types.base"
 SEVERITY: Final = {"hold": "critical", "repair": "warning", "note": "info"}  # ours -> Great Expectations'
 
 
@@ -90,6 +92,7 @@ def _library() -> tuple[Any, Any]:
 def _one_row() -> Any:
     """The batch definition every profile is read through; kept for the process, holds no data."""
     gx, _ = _library()
+    logging.getLogger(CHATTY).setLevel(logging.WARNING)  # it announces a temporary folder on every start
     context = gx.get_context(mode="ephemeral")
     context.variables.progress_bars = {"globally": False, "metric_calculations": False}
     asset = context.data_sources.add_pandas("profile").add_dataframe_asset("snapshot")

@@ -68,8 +68,8 @@ def serve_network(file: Path, say: Callable[[str], None]) -> None:
     plan = settings.schedule
     with local_server() as url:
         from prefect.client.schemas.objects import ConcurrencyLimitConfig, ConcurrencyLimitStrategy
-        from prefect.deployments.runner import EntrypointType
         from prefect.schedules import Cron
+        from prefect.types.entrypoint import EntrypointType
 
         from swaygauge.flows.nightly import nightly
 

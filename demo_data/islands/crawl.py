@@ -15,6 +15,7 @@ class Fault:
     """A night that goes wrong: ``missing`` share of the sources not fetched, lists cut at ``cap`` links."""
 
     missing: float = 0.0
+    steady: bool = False  # the same sources on every such night
     cap: int = 0  # 0 = not cut
 
 
@@ -37,21 +38,24 @@ class Crawl:
     unfetched: float = 0.003  # share of sources not fetched a night
     unevenness: float = 1.0  # shape of the gamma flakiness of sources; smaller = a few very flaky ones
     outages: float = 0.0  # chance that a tenth of one group is not fetched
+    births_seen: bool = True  # a link is seen on the night it is born
     faults: Mapping[int, Fault] = field(default_factory=dict)
     _flaky: Floats = field(default_factory=lambda: np.zeros(0))
 
     def look(self, world: World, night: int) -> Seen:
-        """Crawl one night. A link is seen on the night it is born: one that nobody saw yet has no other birthday."""
+        """Crawl one night. Where births are seen, no link is missed that night: one nobody saw has no birthday."""
         rng, fault = self.rng, self.faults.get(night, Fault())
         if len(self._flaky) == 0:
             self._flaky = rng.gamma(self.unevenness, 1 / self.unevenness, world.capacity)
         low, high = self.flicker
         flicker = float(np.exp(rng.uniform(np.log(low), np.log(high)))) if high > 0 else 0.0
         source = world.source
-        fresh = world.born == night if night else np.zeros(len(source), bool)
+        fresh = world.born == night if night and self.births_seen else np.zeros(len(source), bool)
         missed = rng.random(len(source)) < np.minimum(0.5, flicker * self._flaky[source])
 
-        away = rng.random(world.capacity) < self.unfetched + fault.missing
+        away = rng.random(world.capacity) < self.unfetched + (0.0 if fault.steady else fault.missing)
+        if fault.steady:
+            away |= self._steady(world.capacity) < fault.missing
         if rng.random() < self.outages:
             group = world.group[rng.choice(np.flatnonzero(world.alive))]
             away |= (world.group == group) & (rng.random(world.capacity) < 0.1)
@@ -69,3 +73,7 @@ class Crawl:
             rows[beyond] = False
         unfetched = np.intersect1d(np.flatnonzero(away), source)
         return Seen(rows=rows, unfetched=unfetched, cut=cut, flicker=flicker)
+
+    def _steady(self, capacity: int) -> Floats:
+        """(capacity,) each node's own chance, the same on every night; drawn beside the stream."""
+        return np.random.default_rng(int(self._flaky[0] * 2**52)).random(capacity)

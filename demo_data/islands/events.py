@@ -104,6 +104,27 @@ def aged_farm(count: int, places: tuple[int, int]) -> Event:
     return happen
 
 
+def camouflaged_farm(count: int, places: tuple[int, int]) -> Event:
+    """``count`` existing sites, not all of them obscure, link one target; they endorse each other in a circle and share
+    a few targets that are not popular, so that they are neither new nor un-endorsed."""
+
+    def happen(stage: Stage) -> Planted:
+        target = int(stage.pick(*places)[0])
+        world, rng = stage.world, stage.rng
+        plain = (world.in_degree() <= 3) & (world.out_degree() >= 1) & world.alive
+        plain[target] = False
+        sources = np.sort(rng.choice(np.flatnonzero(plain), count, replace=False))
+        circle = world.link(sources, np.roll(sources, 1), night=stage.night)
+        unpopular = np.flatnonzero((stage.fairshare.place > 200) & world.alive & (world.in_degree() >= 1))
+        shared = rng.choice(unpopular, 5, replace=False)
+        source = np.concatenate([np.repeat(sources, 2), sources])
+        other = np.concatenate([rng.choice(shared, 2 * count), np.full(count, target)])
+        added = np.union1d(circle, world.link(source, other, night=stage.night))
+        return Planted("camouflaged farm", "surge", stage.night, np.array([target]), sources, added)
+
+    return happen
+
+
 def news(count: int, places: tuple[int, int]) -> Event:
     """``count`` established sites (well placed, with several links of their own) link one target on one night."""
 
@@ -226,6 +247,17 @@ def ring(count: int, core: int) -> Event:
     return happen
 
 
+def mutual_ring(count: int, places: tuple[int, int]) -> Event:
+    """``count`` existing sites all link to each other on one night; too few to move lambda."""
+
+    def happen(stage: Stage) -> Planted:
+        members = stage.pick(*places, count=count, where=stage.world.out_degree() >= 1)
+        added = stage.world.link(np.repeat(members, count), np.tile(members, count), night=stage.night)
+        return Planted("mutual ring", "surge", stage.night, members, members, added)
+
+    return happen
+
+
 @dataclass
 class Drip:
     """A few fresh sites a night endorse one target, among other links, night after night."""
@@ -236,6 +268,7 @@ class Drip:
     others: tuple[int, int] = (1, 2)
     endorsed: int = 0  # least in-degree of the target: two more are less of a surprise to a well-endorsed one
     within: int = 5  # nights after the effect is material
+    until: int = 0  # > 0: its effect is measured only until it is material at this place or better
 
     def start(self, stage: Stage) -> Planted:
         target = stage.pick(*self.places, where=stage.world.in_degree() >= self.endorsed)

@@ -24,10 +24,11 @@ def _cosy_sources(world: World, target: Ids) -> Ids:
     near = np.flatnonzero((way >= 0.40) & (way < 0.65))
     eager = (world.out_degree() + 0.3) * world.alive
     source[near] = draw_near(rng, eager, world.group, world.group[target[near]])
+    sources_of = world.endorsers()
     for i in np.flatnonzero(way < 0.40):
-        friends = world.sources_of(int(target[i]))
+        friends = sources_of(int(target[i]))
         if len(friends):
-            second = world.sources_of(int(rng.choice(friends)))
+            second = sources_of(int(rng.choice(friends)))
             if len(second):
                 source[i] = rng.choice(second)
     return source
@@ -67,6 +68,7 @@ class Story:
     target: int
     size: int
     links: dict[int, int] = field(default_factory=dict)  # night -> links to the target
+    aside: dict[int, dict[int, int]] = field(default_factory=dict)  # night -> related node -> links
 
 
 @dataclass
@@ -97,7 +99,10 @@ class News:
         )
         target[aside] = world.rng.choice(related, int(aside.sum()))
         added = world.link(world.pick_sources(count), target, night=night)
-        story.links[night] = int((added % world.capacity == story.target).sum())
+        reached, links = np.unique(added % world.capacity, return_counts=True)
+        told = dict(zip(reached.tolist(), links.tolist(), strict=True))
+        story.links[night] = told.pop(story.target, 0)
+        story.aside[night] = told
 
 
 @dataclass

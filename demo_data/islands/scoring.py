@@ -10,10 +10,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from islands.world import Floats, Ids, Keys
+from islands.world import Flags, Floats, Ids, Keys
 
 FAIRSHARE_ALPHA = 0.85
 PIN_SHARE = 0.80  # katz alpha = this share of 1/lambda on the first night, then kept
+MATERIAL = round(math.log2(1.5), 3)  # octaves from which an effect counts as material
+PIN_LIMIT = 0.90  # ... until alpha * lambda exceeds this
 
 
 @dataclass(frozen=True)
@@ -54,11 +56,15 @@ def standing(keys: Keys, capacity: int, score: str, *, alpha: float, weight: Ids
             break
     present = np.zeros(capacity, bool)
     present[source] = present[target] = True
-    ordered = np.sort(x[present])
-    place = np.zeros(capacity, np.int64)
-    # nodes within a billionth of each other share a place
-    place[present] = 1 + len(ordered) - np.searchsorted(ordered, x[present] * (1 + 1e-9), side="right")
-    return Standing(value=x, place=place)
+    return Standing(value=x, place=places(x, present))
+
+
+def places(value: Floats, present: Flags) -> Ids:
+    """1 = the largest value; nodes within a billionth of each other share a place; 0 where not ``present``."""
+    ordered = np.sort(value[present])
+    place = np.zeros(len(value), np.int64)
+    place[present] = 1 + len(ordered) - np.searchsorted(ordered, value[present] * (1 + 1e-9), side="right")
+    return place
 
 
 def octaves(before: int, after: int) -> float | None:

@@ -4,18 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from datetime import date, timedelta
-from math import log2
 from typing import Any
 
 import numpy as np
 
 from islands.events import Planted
 from islands.lively import Story
-from islands.scoring import spectral_radius
+from islands.scoring import MATERIAL, spectral_radius
 from islands.series import Effect, Series
 from islands.world import Ids, Keys, contains
-
-MATERIAL = log2(1.5)  # octaves from which an effect counts as material
 
 
 def day(first: date, night: int) -> str:

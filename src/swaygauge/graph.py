@@ -15,10 +15,11 @@ from numpy.typing import ArrayLike, NDArray
 
 from swaygauge.errors import InputError
 from swaygauge.kernels import building, components
-from swaygauge.kernels.threads import cut_rows, in_parts
+from swaygauge.kernels.threads import cut_rows, in_parts, thread_count
 from swaygauge.records import Floats, Ids, Ints
 
 NO_WEIGHT: Floats = np.empty(0, np.float64)  # stands for "every weight is 1" in kernels
+NOBODY: Ids = np.empty(0, np.int32)  # stands for node numbers that are left out
 
 
 @dataclass(frozen=True, eq=False)
@@ -92,13 +93,14 @@ class Graph:
         start, column, heft = _in_rows(self.n, heads, tails, given)
         self.m = len(column)
         self._in_degree = np.diff(start).astype(np.int32)
-        self._out_degree = np.bincount(column, minlength=self.n).astype(np.int32)
-        label, count = _components(start, column, self._in_degree, self._out_degree)
+        self._out_degree = _counted(column, self.n)
+        label, count = _components(start, column, self._out_degree)
         self.component_count = count
         self.order, component_start = _order(label, count, self._out_degree)
         self.place = np.empty(self.n, np.int32)
         self.place[self.order] = np.arange(self.n, dtype=np.int32)
-        self.rows = _moved(start, column, heft, self.order, self.place, component_start)
+        new = _starts(self._in_degree[self.order])
+        self.rows = Rows(new, *_sorted_links(new, start, column, NOBODY, heft, self.place), component_start)
         self._label = label
 
     def in_degree(self) -> Ints:
@@ -134,8 +136,9 @@ class Graph:
     def turned(self) -> Rows:
         """Rows of out-links: position p of :attr:`rows` is position n - 1 - p here, so upstream and downstream swap."""
         rows = self.rows
-        start, column, weight = np.empty_like(rows.start), np.empty_like(rows.source), np.empty_like(rows.weight)
-        building.turn_rows(rows.start, rows.source, rows.weight, start, column, weight)
+        start = _starts(self._out_degree[self.order[::-1]])
+        backwards = np.arange(self.n - 1, -1, -1, dtype=np.int32)
+        column, weight = _sorted_links(start, rows.start, NOBODY, rows.source, rows.weight, backwards)
         return Rows(start, column, weight, self.n - rows.component_start[::-1])
 
 
@@ -177,26 +180,46 @@ def _in_rows(n: int, source: Ids, target: Ids, given: Floats) -> tuple[Ints, Ids
     building.count_rows(target, start)
     if building.is_tidy(source, target):
         return start, source, given
-    column, weight = np.empty_like(source), np.empty_like(given)
-    building.place_links(target, source, given, start, column, weight)
-    cuts = cut_rows(start[:-1], start[1:])
-    repeats = np.zeros(len(cuts) - 1, np.int64)
-    in_parts(building.sort_rows, cuts, start, column, weight, repeats)
-    if repeats.any():
-        left = building.merge_repeats(start, column, weight)
+    column, weight = _sorted_links(start, start, source, target, given, NOBODY)
+    left = building.merge_repeats(start, column, weight)
+    if left < len(column):
         column, weight = column[:left].copy(), weight[: left if len(weight) else 0].copy()
     return start, column, weight
 
 
-def _components(start: Ints, column: Ids, in_degree: Ids, out_degree: Ids) -> tuple[Ids, int]:
+def _sorted_links(
+    start: Ints, old_start: Ints, source: Ids, target: Ids, given: Floats, place: Ids
+) -> tuple[Ids, Floats]:
+    """Sources and weights by (target, source), nodes renumbered by ``place`` (if any); rows begin at ``start``.
+
+    One of source and target may be left out: it is the row of ``old_start`` that holds the link.
+    """
+    n, m = len(start) - 1, int(start[-1])
+    shift = max(0, n.bit_length() - max(0, min(9, (m >> 14).bit_length())))  # at most about 512 buckets, none tiny
+    buckets = (n >> shift) + 1
+    bucket = start[np.minimum(np.arange(buckets + 1) << shift, n)]
+    packed, weight = np.empty(m, np.int64), np.empty_like(given)
+    building.deal(old_start, source, target, given, place, shift, bucket.copy(), packed, weight)
+    column = np.empty(m, np.int32)
+    cuts = np.searchsorted(bucket, np.linspace(0, m, 4 * thread_count() + 1)).astype(np.int64)
+    cuts[0], cuts[-1] = 0, buckets
+    in_parts(building.sort_buckets, cuts, bucket, packed, weight, n.bit_length(), shift, column)
+    return column, weight
+
+
+def _counted(column: Ids, n: int) -> Ids:
+    """(n,) how often each number occurs; np.bincount would make a copy of twice the size first."""
+    start = np.empty(n + 1, np.int64)
+    building.count_rows(column, start)
+    return np.diff(start).astype(np.int32)
+
+
+def _components(start: Ints, column: Ids, out_degree: Ids) -> tuple[Ids, int]:
     """Each node's strong component, upstream first, and how many there are."""
-    n = len(in_degree)
-    label = np.empty(n, np.int32)
-    stack, entered, at = np.empty(n, np.int32), np.empty(n, np.int32), np.empty(n, np.int64)
-    count = int(components.strong_components(start, column, label, stack, entered, at))
-    size = np.bincount(label, minlength=count).astype(np.int64)
-    components.relabel(label, size, in_degree, out_degree, np.empty(count, np.int32))
-    return label, count
+    n = len(out_degree)
+    label, stack, entered = (np.empty(n, np.int32) for _ in range(3))
+    count = components.strong_components(start, column, out_degree, label, stack, entered, np.empty(n, np.int64))
+    return label, int(count)
 
 
 def _order(label: Ids, count: int, degree: Ids) -> tuple[Ids, Ints]:
@@ -209,11 +232,7 @@ def _order(label: Ids, count: int, degree: Ids) -> tuple[Ids, Ints]:
     return order, component_start
 
 
-def _moved(start: Ints, column: Ids, weight: Floats, order: Ids, place: Ids, component_start: Ints) -> Rows:
-    """The rows in their new order, columns renumbered and ascending again."""
-    new_start = np.zeros(len(start), np.int64)
-    np.cumsum(np.diff(start)[order], out=new_start[1:])
-    new_column, new_weight = np.empty_like(column), np.empty_like(weight)
-    cuts = cut_rows(new_start[:-1], new_start[1:])
-    in_parts(building.move_rows, cuts, start, column, weight, order, place, new_start, new_column, new_weight)
-    return Rows(new_start, new_column, new_weight, component_start)
+def _starts(degree: Ids) -> Ints:
+    start = np.zeros(len(degree) + 1, np.int64)
+    np.cumsum(degree, out=start[1:])
+    return start

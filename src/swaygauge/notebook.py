@@ -79,9 +79,11 @@ class Network:
         cls, frame: pandas.DataFrame, *, source: str = "source", target: str = "target", weight: str | None = None
     ) -> Network:
         """From a DataFrame with one row per link. Raises InputError for a column that is not there or has gaps."""
-        for column in (source, target, *([weight] if weight else [])):
+        columns = (source, target, *([weight] if weight else []))
+        for column in columns:
             if column not in frame.columns:
                 raise InputError(f"the frame has no column {column!r}; it has {', '.join(map(str, frame.columns))}.")
+        for column in columns:
             gaps = np.flatnonzero(frame[column].isna().to_numpy())
             if len(gaps):
                 raise InputError(f"column {column!r}: expected a value in every row, row {gaps[0]} has none.")

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-import operator
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from datetime import date, timedelta
 
 import numpy as np
 import pytest
+from plain_rules import run_plain_rules
 
 from swaygauge.checks.rules import Rule
 from swaygauge.records import Origin, Profile, RuleResult, Snapshot
@@ -75,16 +75,4 @@ def sound() -> Profile:
 def plain_rules() -> Callable[[Sequence[Rule], Mapping[str, float | None]], tuple[RuleResult, ...]]:
     """What run_rules must say, in plain Python; a test holds the two against each other, long replays use this one."""
 
-    def holds(rule: Rule, value: float | None) -> bool:
-        if value is None:
-            return False
-        under = operator.lt if rule.below else operator.le
-        return (rule.low is None or value >= rule.low) and (rule.high is None or under(value, rule.high))
-
-    def run(rules: Sequence[Rule], facts: Mapping[str, float | None]) -> tuple[RuleResult, ...]:
-        return tuple(
-            RuleResult(r.name, r.column, facts[r.column], r.expected, r.severity, holds(r, facts[r.column]), own=r.own)
-            for r in rules
-        )
-
-    return run
+    return run_plain_rules

@@ -175,3 +175,19 @@ def test_agrees_with_sql(seed: int) -> None:
     assert ours == pytest.approx(expected, rel=1e-12)
     assert p.shrunk
     assert p.lost
+
+
+def test_a_hub_that_stays_away_is_counted_on_the_night_it_went(snapshot_of: Callable[..., Snapshot]) -> None:
+    raw = snapshot_of(BEFORE, 0)
+    book, trailing = start_book(raw), [measure(raw, None)]
+    away = {source: targets for source, targets in BEFORE.items() if source != 3}
+    hubs, lost = [], []
+    for day in (1, 2, 3):
+        tonight = snapshot_of(away, day)
+        profile = measure(tonight, book, trailing=trailing)
+        hubs.append(profile.hub)
+        lost.append(profile.lost)
+        book, _, _ = advance(book, tonight, Verdict("fine", ()))
+        trailing.append(profile)
+    assert hubs == [1 / 6, 0, 0]
+    assert lost == [1 / 10] * 3  # a source that is not fetched is missing as long as it is

@@ -76,11 +76,14 @@ def test_other_limits_or_tails_start_their_part_again(eventful: Any) -> None:
     kept = eventful.state.fitted(nodes + 5, WATCHED)
     assert len(kept.seen) == len(kept.gains.past) == nodes + 5
     assert len(kept.drift.ids) > 0
-    other = replace(WATCHED, drift=replace(WATCHED.drift, limits=(14.0, 18.0)))
+    other = replace(WATCHED, drift=replace(WATCHED.drift, limits=(12.0, 18.0)))
     assert len(eventful.state.fitted(nodes, other).drift.ids) == 0
     assert len(eventful.state.fitted(nodes, other).guard.present) > 0
     heavier = replace(WATCHED, surge=replace(WATCHED.surge, tail=6.0))
     assert len(eventful.state.fitted(nodes, heavier).guard.present) == 0
+    steeper = replace(WATCHED, swing=replace(WATCHED.swing, ratio=1.7))
+    assert len(kept.swings) > 0
+    assert len(eventful.state.fitted(nodes, steeper).swings) == 0
     detect.detect(eventful.inputs[-1], eventful.state, other)
 
 

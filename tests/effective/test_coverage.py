@@ -45,7 +45,7 @@ def play(snapshot_of: Callable[..., Snapshot]) -> Callable[..., tuple[LinkBook, 
 
 @pytest.mark.parametrize(("sources", "is_coverage"), [(4, False), (5, True)])
 def test_links_that_expire_together(play, sources: int, is_coverage: bool) -> None:
-    before, after, changes = play(town(), without(town(), range(sources)))
+    before, after, changes = play(town(), without(town(), range(sources)), verdict=FINE)
     assert len(changes.kind) == 5 * sources
     assert changes.coverage.all() == is_coverage
     compared = comparable_before(before, changes)
@@ -59,20 +59,29 @@ def test_links_that_expire_together(play, sources: int, is_coverage: bool) -> No
 @pytest.mark.parametrize(("share", "is_coverage"), [(0.0125, False), (0.0124, True)])
 def test_expiry_needs_more_than_its_share(play, share: float, is_coverage: bool) -> None:
     options = UpkeepOptions(carry_nights=0, expiry_share=share)
-    changes = play(town(), without(town(), range(5)), options=options)[2]
+    changes = play(town(), without(town(), range(5)), verdict=FINE, options=options)[2]
     assert changes.coverage.any() == is_coverage
 
 
 @pytest.mark.parametrize(("sources", "is_coverage"), [(2, False), (3, True)])
 def test_known_links_that_come_back(play, sources: int, is_coverage: bool) -> None:
     """Ten of 2,000 links are .5 %, fifteen are more."""
-    before, after, changes = play(town(), without(town(), range(sources)), town())
+    before, after, changes = play(town(), without(town(), range(sources)), town(), verdict=FINE)
     assert len(changes.kind) == 5 * sources
     assert changes.coverage.all() == is_coverage
     if is_coverage:
         compared = comparable_before(before, changes)
         assert compared is not None
         assert in_effect(compared) == in_effect(after)
+
+
+def test_where_lists_are_capped_few_links_that_expire_or_come_back_are_coverage_too(play) -> None:
+    capped = Verdict("repair", (), capped=True)
+    expired = play(town(), without(town(), range(1)), verdict=capped)[2]
+    returned = play(town(), without(town(), range(1)), town(), verdict=capped)[2]
+    for changes in (expired, returned):
+        assert len(changes.kind) == 5
+        assert changes.coverage.all()
 
 
 def test_what_else_returning_sources_show_is_coverage_but_not_the_news_of_others(play) -> None:

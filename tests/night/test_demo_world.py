@@ -1,4 +1,4 @@
-"""The shipped demo world through the night: what is planted is raised as its kind on its night, quiet nights stay quiet.
+"""The shipped demo world through the night: each planted event is raised as its kind, quiet nights stay quiet.
 
 The truth file is the generator's; no threshold was chosen on this world's seed.
 """

@@ -215,7 +215,7 @@ def test_a_damaged_part_is_named_and_a_re_run_heals_it(store):
         store.part(NET, FIRST, kind="scores", score="katz")
 
 
-def test_superfluous_files_go_at_a_later_publish_once_they_are_old(store):
+def test_superfluous_files_go_with_a_sweep_once_they_are_old(store):
     run_night(store, FIRST)
     old = set(files(store))
     run_night(store, FIRST, seed=3)
@@ -228,12 +228,14 @@ def test_superfluous_files_go_at_a_later_publish_once_they_are_old(store):
         stray.relative_to(store.workspace).as_posix(),
     }
     run_night(store, first_nights(2)[1])
-    assert len(orphans(store.catalog, store.workspace, NET)) == 2  # too young
+    assert store.sweep(NET) == 0, "they are too young"
+    assert len(orphans(store.catalog, store.workspace, NET)) == 2
     for path in orphans(store.catalog, store.workspace, NET):
         os.utime(path, (1, 1))
     staged = stage_night(store, first_nights(3)[2])
     for path in store.workspace.rglob("*.parquet"):
         os.utime(path, (1, 1))  # staged and live files stay however old they are
+    assert store.sweep(NET) == 2
     store.publish(staged)
     assert orphans(store.catalog, store.workspace, NET) == []
     assert len(files(store)) == 8

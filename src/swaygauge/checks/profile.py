@@ -8,7 +8,7 @@ from typing import Any, Final
 import numpy as np
 
 from swaygauge.overlap import LIST, MANY, Overlap, overlap
-from swaygauge.records import Flags, Ids, LinkBook, Profile, Snapshot
+from swaygauge.records import CARRIED, Flags, Ids, LinkBook, Profile, Snapshot
 
 HUBS: Final = 100  # how many of the largest sources count as hubs
 TRAILING: Final = 14  # accepted nights that node and link ratios are taken over
@@ -28,7 +28,8 @@ def measure(
     book without a trailing profile, or profiles without a book.
 
     Where a fetch list says what was fetched, kept, lost, hub, cut and shrunk are over fetched sources only and
-    ``unfetched`` tells the rest: three states, not a loss. A share of nothing is 0 (kept: 1).
+    ``unfetched`` tells the rest: three states, not a loss. A share of nothing is 0 (kept: 1). A source most of whose
+    links were carried already last night is no hub: its loss was measured on the night it was lost.
 
     NumPy on the sorted columns, not DuckDB: at 1e6 links the counts and the churn took 0.07 s against 0.27 s for one
     DuckDB query over the same arrays, at 1e7 links 0.66 s against 2.5 s (two cores, best of three).
@@ -47,7 +48,7 @@ def measure(
 
     facts: dict[str, Any] = dict.fromkeys(("kept", "lost", "hub", "cut", "shrunk", "node_ratio", "link_ratio"))
     if book is not None:
-        facts |= _churn(overlap(book, snapshot))
+        facts |= _churn(overlap(book, snapshot), book)
         recent = trailing[-TRAILING:]
         base = float(np.median([p.nodes for p in recent]))
         facts |= {
@@ -76,11 +77,12 @@ def measure(
     )
 
 
-def _churn(match: Overlap) -> dict[str, Any]:
+def _churn(match: Overlap, book: LinkBook) -> dict[str, Any]:
     judged = match.judged
     many = match.before >= MANY
     lists = judged & (match.before >= LIST)
-    hubs = _largest(match, lists)
+    carried = np.bincount(book.source[book.state == CARRIED], minlength=len(match.before))
+    hubs = _largest(match, lists & (2 * carried <= match.before))  # one that is gone since earlier was told of then
     base = int(match.before[judged].sum())
     return {
         "kept": int(match.again[judged].sum()) / base if base else 1.0,

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Sequence
+from collections.abc import Callable, Mapping, Sequence
 from itertools import pairwise
 
 import numpy as np
@@ -16,9 +16,13 @@ from swaygauge.errors import RuleError
 from swaygauge.overlap import link_keys
 from swaygauge.records import Profile, RuleResult, Snapshot, Verdict
 
+RunRules = Callable[[Sequence[Rule], Mapping[str, float | None]], tuple[RuleResult, ...]]
 
-def judge(profile: Profile, limits: Limits | None = None, *, fine_nights: Sequence[Profile] = ()) -> Verdict:
-    """Judge one night: fine, repair or hold, by the severest rule that failed.
+
+def judge(
+    profile: Profile, limits: Limits | None = None, *, fine_nights: Sequence[Profile] = (), run: RunRules = run_rules
+) -> Verdict:
+    """Judge one night: fine, repair or hold, by the severest rule that failed. ``run`` judges the rules.
 
     ``fine_nights``: profiles of the nights accepted as fine, oldest first; repair limits are loosened by them, except
     while there is too little history since the last baseline (then a note says so and the limits stand).
@@ -29,7 +33,7 @@ def judge(profile: Profile, limits: Limits | None = None, *, fine_nights: Sequen
     fixed = limits or Limits()
     fitted = loosened(fixed, fine_nights) if profile.history >= fixed.min_history else fixed
     applied = rules(profile, fitted)
-    results = run_rules(applied, facts(profile))
+    results = run(applied, facts(profile))
     failed = {result.rule for result in results if not result.ok and not result.crashed}
     severities = {result.severity for result in results if result.rule in failed}
     verdict = Verdict(

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import typer
 
-from swaygauge.cli import demo, reading, running
+from swaygauge.cli import demo, reading, running, studying
 from swaygauge.cli.context import guarded
 
 app = typer.Typer(
@@ -29,6 +29,8 @@ for command in (
     running.backfill,
     running.schedule,
     running.checkup,
+    studying.tune,
+    studying.steadiness,
     demo.demo,
 ):
     app.command()(guarded(command))

@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from swaygauge.store.views import NightView
 
 WIDTH = 100
+SHOWN_NAMES = 3  # names in a line about the network as a whole
 USUAL = 14  # stored nights that "usual" is measured on
 CAUTION = (
     "These are measurements of links, not evidence of what anyone meant or did. An honest wave of newcomers can look "
@@ -96,22 +97,37 @@ def _usual(place: Place, reader: Reader, view: NightView) -> Iterator[str]:
             counts[alert.night] += 1
     values = sorted(counts.values())
     yield from _wrap(
-        f"How unusual is that?  The {len(values)} scored nights before had {median(values):g} alerts in the middle, "
+        f"How unusual is that?  The {len(values)} scored nights before had a median of {median(values):g} alerts, and "
         f"{values[-1]} at most.",
         "  ",
         "",
     )
 
 
+def _named(facts: dict[str, Any], key: str) -> str:
+    """How many, and the first few by name."""
+    told = facts.get("named", {}).get(key, {"count": 0, "names": []})
+    if not told["count"]:
+        return "nobody"
+    names = [visible(name) for name in told["names"][:SHOWN_NAMES]]
+    more = f" and {told['count'] - len(names)} more" if told["count"] > len(names) else ""
+    return f"{', '.join(names)}{more}"
+
+
+def _most_endorsed(facts: dict[str, Any]) -> str:
+    told = facts.get("named", {}).get("zeroed")
+    return f" (the most endorsed: {', '.join(visible(name) for name in told['names'][:SHOWN_NAMES])})" if told else ""
+
+
 def _network(facts: dict[str, Any]) -> Iterator[str]:
     for score in ("katz", "fairshare"):
         whole = facts.get(f"network.{score}")
         if whole:
-            new = round(whole["turnover"] * whole["depth"])
             order = "unknown" if whole["tau_b"] is None else f"{whole['tau_b']:.3f}"
             yield from _wrap(
-                f"{score}: of the top {whole['depth']}, {new} were not in it before; order agreement (tau-b) "
-                f"{order}, rank-biased overlap {whole['overlap']:.3f}."
+                f"{score}, top {whole['depth']}: {_named(facts, f'entered.{score}')} entered, "
+                f"{_named(facts, f'left.{score}')} left; order agreement (tau-b) {order}, rank-biased overlap "
+                f"{whole['overlap']:.3f}."
             )
     pin, bounds = facts.get("pin"), facts.get("bounds")
     if pin and bounds:
@@ -120,13 +136,15 @@ def _network(facts: dict[str, Any]) -> Iterator[str]:
         else:
             yield from _wrap(
                 f"alpha {pin['alpha']:.6g}, fixed on {pin['night']}; alpha x lambda is "
-                f"{pin['alpha'] * bounds['upper']:.3f} tonight (a new alpha is fixed above the limit)."
+                f"{pin['alpha'] * bounds['upper']:.3f} tonight (past scores.katz.limit a new alpha is fixed)."
             )
     leaks = facts.get("leaks")
     if leaks:
         yield from _wrap(
-            f"Plain eigenvector centrality would leave {leaks['zeroed_count']:,} endorsed nodes at zero; "
-            f"{leaks['components']:,} strong components, the largest with {leaks['largest']:,} nodes."
+            f"Plain eigenvector centrality would leave {leaks['zeroed_count']:,} endorsed nodes at zero"
+            f"{_most_endorsed(facts)}. {leaks['components']:,} strong components, the largest with "
+            f"{leaks['largest']:,} nodes; {_share(leaks['upstream_share'])} of all nodes lead into it and "
+            f"{_share(leaks['downstream_share'])} are only led to."
         )
 
 

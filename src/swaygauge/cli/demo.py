@@ -13,7 +13,7 @@ import typer
 from swaygauge.cli.brief import brief_lines
 from swaygauge.cli.context import place_of, reader_of
 from swaygauge.cli.output import say
-from swaygauge.cli.running import tell
+from swaygauge.cli.running import say_if_compiling, tell
 from swaygauge.config.place import Place, read_place
 from swaygauge.errors import ConfigError
 from swaygauge.visible import visible
@@ -69,6 +69,7 @@ def demo(
     nights = list(find_snapshots(data, load_settings(place.file).snapshots.pattern).nights.items())
     late = sorted((data / "late").glob("*")) if (data / "late").is_dir() else []
     incoming = place.workspace / ".incoming"
+    say_if_compiling()
     say(f"{place.title}: starting the flows (the first start makes a database and takes longer) ...")
     from swaygauge.flows.start import run_backfill, run_nightly
 

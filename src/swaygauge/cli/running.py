@@ -18,7 +18,7 @@ from swaygauge.cli.context import (
     place_of,
     settings_folder,
 )
-from swaygauge.cli.output import print_json, say
+from swaygauge.cli.output import complain, print_json, say
 from swaygauge.config.place import Place, find_file
 from swaygauge.errors import ConfigError
 from swaygauge.visible import visible
@@ -33,6 +33,15 @@ Day = datetime | None
 def tell(outcome: Outcome) -> None:
     when = outcome.night or "file"
     say(f"  {when}  {outcome.outcome:<9} {visible(outcome.detail, limit=None)}  ({outcome.seconds:.1f} s)")
+
+
+def say_if_compiling() -> None:
+    """A first night on a machine compiles the loops; say so rather than look stuck."""
+    from importlib import import_module
+
+    import_module("swaygauge.scores.spectrum")  # defines the loops that a night uses
+    if import_module("swaygauge.kernels.compiled").first_use():
+        complain("compiling the loops, once on this machine (about 20 s of work) ...")
 
 
 def _exit_code(outcomes: list[Outcome]) -> int:
@@ -74,6 +83,7 @@ def night(
     from swaygauge.flows.prepare import prepare
 
     prepare(place.workspace)
+    say_if_compiling()
     from swaygauge.flows.start import run_nightly
 
     _finish(run_nightly(place.file, day, None if as_json else tell), place.network, as_json)
@@ -113,6 +123,7 @@ def backfill(
     from swaygauge.flows.prepare import prepare
 
     prepare(place.workspace)
+    say_if_compiling()
     from swaygauge.flows.start import run_backfill
 
     outcomes = run_backfill(

@@ -11,20 +11,21 @@ from swaygauge.detect.alert import node_alert
 from swaygauge.detect.picture import Picture
 from swaygauge.detect.spread import SpreadHistory
 from swaygauge.detect.state import DriftMemory
-from swaygauge.detect.sums import SIGN, DriftAlarms, choose_limit
+from swaygauge.detect.sums import REPORTED, SIGN, DriftAlarms, choose_limit
 from swaygauge.moves import depth_band
 from swaygauge.records import MOVED, Alert, Flags, Ints
 
 
 def find_drifts(picture: Picture, earlier: Sequence[Alert]) -> list[Alert]:
-    """One alert per node and direction whose sum crossed the limit in use, under the score it moved most.
+    """One alert per node and direction whose sum crossed the limit in use or a larger one, under the score it moved
+    most.
 
-    Nodes that another alert of tonight already tells of are left out, and those that drift told of within the cooldown.
+    Larger ones too: a sum that crossed the limit now in use before that was in use has started again, unheard. Nodes
+    that another alert of tonight already tells of are left out, and those that drift told of within the cooldown.
     """
     memory, options = picture.step.memory, picture.thresholds.drift
-    limit = _limit_in_use(picture)
     alerts = []
-    for direction, place in zip(*np.nonzero(first_alarms(picture, earlier)[:, limit]), strict=True):
+    for direction, place, limit in _reported(picture, earlier):
         at = (direction, limit, place)
         crossed = [name for name, flags in picture.step.alarm.items() if flags[at]]
         score = max(crossed, key=lambda name: (abs(memory.sums[name].octaves[at]), name))
@@ -48,6 +49,24 @@ def find_drifts(picture: Picture, earlier: Sequence[Alert]) -> list[Alert]:
         )
         alerts.append(replace(alert, rank_before=int(sums.start_rank[at])))
     return alerts
+
+
+def _reported(picture: Picture, alerts: Iterable[Alert]) -> list[tuple[int, int, int]]:
+    """(direction, place of the node, smallest limit crossed) of every drift to tell of tonight."""
+    memory, options, number = picture.step.memory, picture.thresholds.drift, picture.inputs.history
+    used = _limit_in_use(picture)
+    crossed = np.zeros((len(SIGN), len(options.limits), len(memory.ids)), np.bool_)
+    for flags in picture.step.alarm.values():
+        crossed |= flags
+    crossed &= ~np.isin(memory.ids, _told(alerts))
+    found = []
+    for direction in range(len(SIGN)):
+        rested = picture.state.alarms.rested(number, memory.ids, direction, REPORTED, cooldown=options.cooldown)
+        heard = crossed[direction, used:]
+        smallest = used + np.argmax(heard, axis=0)
+        places = np.flatnonzero(heard.any(axis=0) & rested).tolist()
+        found += [(direction, place, int(smallest[place])) for place in places]
+    return found
 
 
 def first_alarms(picture: Picture, alerts: Iterable[Alert]) -> Flags:
@@ -76,7 +95,9 @@ def settle_drift(picture: Picture, alerts: Iterable[Alert]) -> tuple[DriftMemory
         name: memory.sums[name].reset(flags | told, picture.views[name].rank_now[memory.ids])
         for name, flags in picture.step.alarm.items()
     }
-    direction, limit, place = np.nonzero(first_alarms(picture, alerts))
+    reported = np.array([(way, REPORTED, place) for way, place, _ in _reported(picture, alerts)], np.int64)
+    rows = np.vstack((np.argwhere(first_alarms(picture, alerts)), reported.reshape(-1, 3)))
+    direction, limit, place = rows.T
     alarms = picture.state.alarms.after(
         picture.inputs.history,
         memory.ids[place].astype(np.int64),

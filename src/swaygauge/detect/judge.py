@@ -14,6 +14,8 @@ from swaygauge.detect.picture import Picture, take_picture
 from swaygauge.detect.presence import RENAME_NIGHTS
 from swaygauge.detect.state import DetectorState
 from swaygauge.detect.surge import count_unreported
+from swaygauge.detect.swing import count_swings
+from swaygauge.detect.swings import after_night
 from swaygauge.detect.thresholds import Thresholds
 from swaygauge.records import Alert
 
@@ -55,8 +57,10 @@ def _next_state(picture: Picture, alerts: list[Alert]) -> DetectorState:
     memory = {"memory": surge.memory, "dispersion_memory": surge.dispersion_memory}
     recent = state.renamed_on > number - RENAME_NIGHTS
     old = [alert.facts["old"] for alert in alerts if alert.kind == "rename"]
+    swings = after_night(state.swings, count_swings(picture, alerts), nights=picture.thresholds.swing.budget_nights)
     return replace(
         state,
+        swings=swings,
         seen=state.seen | picture.present,
         gains=remember_counts(state.gains, picture.gains, picture.present, **memory),
         losses=remember_counts(state.losses, picture.losses, picture.present, **memory),

@@ -87,8 +87,10 @@ def find_displacement(picture: Picture, earlier: Sequence[Alert]) -> list[Alert]
     """Many ranks moved although the nodes' own scores did not: others came in, or dropped out, above them. One line."""
     if picture.new_baseline or picture.first:
         return []
+    options = picture.thresholds.swing
+    ratio = options.early_ratio if picture.quiet else options.ratio
     displaced = {
-        name: large_moves(picture, view) & ~moved_itself(picture, view) for name, view in picture.views.items()
+        name: large_moves(picture, view, ratio) & ~moved_itself(picture, view) for name, view in picture.views.items()
     }
     name = max(displaced, key=lambda score: (np.count_nonzero(displaced[score]), score), default=None)
     if name is None or np.count_nonzero(displaced[name]) < picture.thresholds.network.displaced_nodes:

@@ -12,6 +12,7 @@ from swaygauge.detect.counts import CountHistory
 from swaygauge.detect.guard import GuardHistory
 from swaygauge.detect.spread import SpreadHistory
 from swaygauge.detect.sums import DriftAlarms, ScoreSums
+from swaygauge.detect.swings import ratios_of
 from swaygauge.detect.thresholds import Thresholds
 from swaygauge.records import Flags, Ids, Ints
 
@@ -49,13 +50,15 @@ class DetectorState:
     alarms: DriftAlarms
     renamed: Ids  # old nodes of recent rename proposals, whose departure is then no news
     renamed_on: Ints  # the numbers of those nights
-    limits: tuple[float, ...]  # drift limits and count tails that the sums were kept for
+    swings: Ints  # (t, ratios) nodes that swung on the trailing nights, under each ratio
+    limits: tuple[float, ...]  # drift limits, count tails and swing ratios that the sums were kept for
     tails: tuple[float, ...]
+    ratios: tuple[float, ...]
 
     @staticmethod
     def empty(nodes: int, thresholds: Thresholds) -> DetectorState:
         """Before the first night."""
-        tails = tails_of(thresholds)
+        tails, ratios = tails_of(thresholds), ratios_of(thresholds.swing)
         return DetectorState(
             seen=np.zeros(nodes, np.bool_),
             gains=CountHistory.empty(nodes),
@@ -66,13 +69,15 @@ class DetectorState:
             alarms=DriftAlarms(),
             renamed=np.zeros(0, np.int32),
             renamed_on=np.zeros(0, np.int64),
+            swings=np.zeros((0, len(ratios)), np.int64),
             limits=thresholds.drift.limits,
             tails=tails,
+            ratios=ratios,
         )
 
     def fitted(self, nodes: int, thresholds: Thresholds) -> DetectorState:
         """The same with room for nodes named since; what was kept for other limits or tails starts again."""
-        tails, drift = tails_of(thresholds), self.drift
+        tails, drift, ratios = tails_of(thresholds), self.drift, ratios_of(thresholds.swing)
         same_sums = self.limits == thresholds.drift.limits and len(drift.new) == thresholds.drift.window
         return DetectorState(
             seen=np.concatenate((self.seen, np.zeros(nodes - len(self.seen), np.bool_))),
@@ -84,8 +89,10 @@ class DetectorState:
             alarms=self.alarms if same_sums else DriftAlarms(),
             renamed=self.renamed,
             renamed_on=self.renamed_on,
+            swings=self.swings if self.ratios == ratios else np.zeros((0, len(ratios)), np.int64),
             limits=thresholds.drift.limits,
             tails=tails,
+            ratios=ratios,
         )
 
     def to_columns(self) -> tuple[Columns, dict[str, Any]]:
@@ -94,6 +101,7 @@ class DetectorState:
         for name, history in (("gains", self.gains), ("losses", self.losses)):
             columns |= {f"{name}.past": history.past, f"{name}.expected": history.expected}
         columns |= {"guard.present": self.guard.present, "guard.surprising": self.guard.surprising.ravel()}
+        columns["swings"] = self.swings.ravel()
         for score, spread in self.spread.items():
             columns |= {f"spread.{score}.{field}": getattr(spread, field) for field in _SPREAD_FIELDS}
         columns |= {f"alarms.{field}": getattr(self.alarms, field) for field in _ALARM_FIELDS}
@@ -109,6 +117,7 @@ class DetectorState:
             "drift_window": len(self.drift.new),
             "limits": list(self.limits),
             "tails": list(self.tails),
+            "ratios": list(self.ratios),
         }
         return columns, scalars
 
@@ -116,7 +125,7 @@ class DetectorState:
     def from_columns(columns: Columns, scalars: dict[str, Any]) -> DetectorState:
         """The state that :meth:`to_columns` took apart."""
         followed, window = len(columns["drift.ids"]), int(scalars["drift_window"])
-        limits, tails = tuple(scalars["limits"]), tuple(scalars["tails"])
+        limits, tails, ratios = (tuple(scalars[name]) for name in ("limits", "tails", "ratios"))
 
         def shaped(name: str, *shape: int) -> NDArray[Any]:
             return columns[name].reshape(shape)
@@ -148,8 +157,10 @@ class DetectorState:
             alarms=DriftAlarms(**{field: columns[f"alarms.{field}"] for field in _ALARM_FIELDS}),
             renamed=columns["renamed"],
             renamed_on=columns["renamed_on"],
+            swings=columns["swings"].reshape(-1, len(ratios)),
             limits=limits,
             tails=tails,
+            ratios=ratios,
         )
 
 

@@ -18,6 +18,7 @@ from swaygauge.records import Flags, Floats, Ids, Ints
 UP: Final = 0
 DOWN: Final = 1
 SIGN: Final = (1.0, -1.0)
+REPORTED: Final = -1  # stands for the limit in DriftAlarms of what was told of, whatever the limit then
 BAND_WEIGHT: Final = 5.0  # how many nights of usual size a node's own roughness starts from
 
 
@@ -102,7 +103,8 @@ def roughness(z: Floats) -> Floats:
 
 @dataclass(frozen=True)
 class DriftAlarms:
-    """First alarms of the trailing nights, all (a,): number of the night, node, direction, place of the limit."""
+    """First alarms of the trailing nights, all (a,): number of the night, node, direction, place of the limit;
+    beside them what was told of."""
 
     night: Ints = field(default_factory=lambda: np.zeros(0, np.int64))
     node: Ints = field(default_factory=lambda: np.zeros(0, np.int64))

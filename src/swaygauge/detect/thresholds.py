@@ -62,6 +62,9 @@ class Swing:
         0.05  # least change of the log value against the depth band, same direction
     )
     early_ratio: Ratio = 2.0  # least ratio while there are fewer than ``quiet_history`` nights
+    raised: tuple[Ratio, ...] = (2.0, 3.0, 4.0, 6.0, 8.0, 12.0, 16.0)  # taken instead where ``ratio`` fires too often
+    budget: Annotated[float, Gt(0)] = 4.0  # the smallest ratio with at most so many swings a night is used
+    budget_nights: Nights = 28  # over so many nights
 
 
 @dataclass(frozen=True)
@@ -70,9 +73,9 @@ class Drift:
 
     ratio: Ratio = 1.5  # least cumulative ratio of ranks since the sum was last zero
     allowance: Annotated[float, Gt(0)] = 0.5  # k, in standard deviations; half the shift to be found
-    limits: tuple[Annotated[float, Gt(0)], ...] = (12.0, 14.0, 16.0, 20.0, 24.0)  # h, run side by side
-    first_limit: Annotated[float, Gt(0)] = 14.0  # the h used until there is enough history; one of ``limits``
-    budget: Annotated[float, Gt(0)] = 1.0  # the smallest h with at most so many first alerts a night is used
+    limits: tuple[Annotated[float, Gt(0)], ...] = (10.0, 12.0, 14.0, 16.0, 20.0, 24.0)  # h, run side by side
+    first_limit: Annotated[float, Gt(0)] = 12.0  # the h used until there is enough history; one of ``limits``
+    budget: Annotated[float, Gt(0)] = 0.5  # the smallest h with at most so many first alerts a night is used
     budget_nights: Nights = 28  # over so many nights
     cooldown: Nights = 14  # nights in which the same node and direction is not reported again
     clip: Annotated[float, Gt(0)] = 4.0  # a single night counts for at most so many standard deviations
@@ -122,3 +125,6 @@ class Thresholds:
             raise ValueError(f"drift.first_limit = {self.drift.first_limit} must be one of drift.limits.")
         if list(self.drift.limits) != sorted(set(self.drift.limits)):
             raise ValueError(f"drift.limits = {self.drift.limits} must rise and hold no value twice.")
+        ratios = (self.swing.ratio, *self.swing.raised)
+        if list(ratios) != sorted(set(ratios)):
+            raise ValueError(f"swing.ratio and swing.raised = {ratios} must rise and hold no value twice.")

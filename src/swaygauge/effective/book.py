@@ -69,7 +69,8 @@ def advance(
     moved = changes(table, state, expired)
     if not verdict.rebaselined:
         links = (int(np.count_nonzero(book.in_effect)), int(np.count_nonzero(after.in_effect)))
-        moved = dataclasses.replace(moved, coverage=frozen(coverage_rows(moved, links=links, options=options)))
+        aside = coverage_rows(moved, links=links, options=options, capped=verdict.capped)
+        moved = dataclasses.replace(moved, coverage=frozen(aside))
     return after, moved, _counted(after, moved, absence, verdict)
 
 

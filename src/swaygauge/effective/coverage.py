@@ -12,24 +12,28 @@ from swaygauge.overlap import link_keys, spliced
 from swaygauge.records import EXPIRED, NEW, RETURNED, SEEN, Flags, LinkBook, LinkChanges, frozen
 
 
-def coverage_rows(changes: LinkChanges, *, links: tuple[int, int], options: UpkeepOptions) -> Flags:
+def coverage_rows(
+    changes: LinkChanges, *, links: tuple[int, int], options: UpkeepOptions, capped: bool = False
+) -> Flags:
     """(k,) which changes to set aside when comparing nights; ``links`` in effect before and now.
 
     Carried links whose time is over, when at least ``expiry_sources`` sources and more than ``expiry_share`` of last
     night's links go at once: one large source that expires is news, a crawl that lost a region is not. Links that come
     back, when they are more than ``return_share`` of tonight's links; with them whatever else their sources show, if
-    at least half of what such a source adds was known.
+    at least half of what such a source adds was known. With ``capped`` lists both are set aside however few: a list
+    that is cut night after night shows now these, now those of its links.
     """
     before, now = links
     aside = np.zeros(len(changes.kind), dtype=np.bool_)
 
     expired = changes.kind == EXPIRED
     sources = len(np.unique(changes.source[expired]))
-    if sources >= options.expiry_sources and np.count_nonzero(expired) > options.expiry_share * before:
+    many = sources >= options.expiry_sources and np.count_nonzero(expired) > options.expiry_share * before
+    if capped or many:
         aside |= expired
 
     back = changes.kind == RETURNED
-    if np.count_nonzero(back) > options.return_share * now:
+    if back.any() and (capped or np.count_nonzero(back) > options.return_share * now):
         added = back | (changes.kind == NEW)
         size = int(changes.source.max()) + 1
         known = np.bincount(changes.source[back], minlength=size)

@@ -1,4 +1,4 @@
-"""Kernels that turn a list of links into in-link rows, and reorder rows."""
+"""Kernels that turn a list of links into rows of in-links: a radix sort by (target, source), and merging repeats."""
 
 from __future__ import annotations
 
@@ -7,7 +7,8 @@ import numpy as np
 from swaygauge.kernels.compiled import compiled
 from swaygauge.records import Floats, Ids, Ints
 
-SHORT = 24  # rows up to this length are sorted by insertion
+BATCH = 1024  # links looked up at a time
+DIGIT = 11  # bits that one pass of the radix sort looks at
 
 
 @compiled
@@ -30,195 +31,143 @@ def count_rows(key: Ids, start: Ints) -> None:
 
 
 @compiled
-def place_links(key: Ids, other: Ids, given: Floats, start: Ints, column: Ids, weight: Floats) -> None:
-    """Counting sort: put each link's other end (and weight) into the row of its key, in the order given."""
-    weighted = len(given) > 0
-    for i in range(len(key)):
-        row = key[i]
-        at = start[row]
-        column[at] = other[i]
-        if weighted:
-            weight[at] = given[i]
-        start[row] = at + 1
-    for row in range(len(start) - 1, 0, -1):  # the cursors stand one row ahead now
-        start[row] = start[row - 1]
-    start[0] = 0
+def deal(
+    start: Ints,
+    source: Ids,
+    target: Ids,
+    given: Floats,
+    place: Ids,
+    shift: int,
+    bucket: Ints,
+    packed: Ints,
+    weight: Floats,
+) -> None:
+    """Links, as (target, source) packed in one number, into buckets of 2**shift targets.
+
+    Source or target may be empty and is then the row that holds the link: rows begin at ``start`` (else not looked at).
+
+    Nodes are renumbered by ``place`` unless it is empty. ``bucket`` is where each bucket's links begin, and is used up.
+    Writing to a few hundred places at a time stays in the processor's caches; a million rows at once do not. Numbers
+    are looked up for a batch at a time: one by one, every look-up would wait for the stores before it.
+    """
+    keys = np.empty(BATCH, np.int64)
+    row = 0
+    for low in range(0, len(packed), BATCH):
+        size = min(BATCH, len(packed) - low)
+        for i in range(size):
+            if len(source) == 0 or len(target) == 0:
+                while start[row + 1] <= low + i:
+                    row += 1
+            u = source[low + i] if len(source) > 0 else row
+            v = target[low + i] if len(target) > 0 else row
+            if len(place) > 0:
+                u, v = place[u], place[v]
+            keys[i] = (np.int64(v) << 32) | u
+        for i in range(size):
+            b = keys[i] >> (32 + shift)
+            at = bucket[b]
+            packed[at] = keys[i]
+            if len(given) > 0:
+                weight[at] = given[low + i]
+            bucket[b] = at + 1
 
 
 @compiled
-def _less(column: Ids, weight: Floats, i: int, j: int) -> bool:
-    if column[i] != column[j]:
-        return bool(column[i] < column[j])
-    return bool(len(weight) > 0 and weight[i] < weight[j])
+def _sort_digit(
+    keys: Ints, weight: Floats, first: int, size: int, spare: Ints, spare_weight: Floats, low_bit: int, back: bool
+) -> None:
+    """One stable pass of a radix sort: from keys[first:] to spare, or back."""
+    counts = np.zeros((1 << DIGIT) + 1, np.int64)
+    mask = (1 << DIGIT) - 1
+    for i in range(size):
+        key = spare[i] if back else keys[first + i]
+        counts[((key >> low_bit) & mask) + 1] += 1
+    for digit in range(mask + 1):
+        counts[digit + 1] += counts[digit]
+    for i in range(size):
+        key = spare[i] if back else keys[first + i]
+        digit = (key >> low_bit) & mask
+        at = counts[digit]
+        counts[digit] = at + 1
+        if back:
+            keys[first + at] = key
+            if len(weight) > 0:
+                weight[first + at] = spare_weight[i]
+        else:
+            spare[at] = key
+            if len(weight) > 0:
+                spare_weight[at] = weight[first + i]
 
 
 @compiled
-def _swap(column: Ids, weight: Floats, i: int, j: int) -> None:
-    column[i], column[j] = column[j], column[i]
-    if len(weight) > 0:
-        weight[i], weight[j] = weight[j], weight[i]
-
-
-@compiled
-def _sift(column: Ids, weight: Floats, low: int, root: int, size: int) -> None:
-    while 2 * root + 1 < size:
-        child = 2 * root + 1
-        if child + 1 < size and _less(column, weight, low + child, low + child + 1):
-            child += 1
-        if not _less(column, weight, low + root, low + child):
-            return
-        _swap(column, weight, low + root, low + child)
-        root = child
-
-
-@compiled
-def _heap_sort(column: Ids, weight: Floats, low: int, high: int) -> None:
-    size = high - low
-    for root in range(size // 2 - 1, -1, -1):
-        _sift(column, weight, low, root, size)
-    for last in range(size - 1, 0, -1):
-        _swap(column, weight, low, low + last)
-        _sift(column, weight, low, 0, last)
-
-
-@compiled
-def _insertion_sort(column: Ids, weight: Floats, low: int, high: int) -> None:
-    for i in range(low + 1, high):
-        j = i
-        while j > low and _less(column, weight, j, j - 1):
-            _swap(column, weight, j, j - 1)
-            j -= 1
-
-
-@compiled
-def _sort_row(column: Ids, weight: Floats, first: int, last: int, stack: Ints) -> None:
-    """Ascending by (column, weight): quicksort on an explicit stack, heapsort where it would go deep."""
-    i = first + 1
-    while i < last and not _less(column, weight, i, i - 1):
-        i += 1
-    if i >= last:
-        return
-    stack[0], stack[1], stack[2] = first, last, 0
-    top = 1
-    while top > 0:
-        top -= 1
-        low, high, depth = stack[3 * top], stack[3 * top + 1], stack[3 * top + 2]
-        if high - low <= SHORT:
-            _insertion_sort(column, weight, low, high)
-            continue
-        if depth > 60 or top > 60:
-            _heap_sort(column, weight, low, high)
-            continue
-        middle = (low + high) // 2  # median of three to the front as the pivot
-        if _less(column, weight, middle, low):
-            _swap(column, weight, middle, low)
-        if _less(column, weight, high - 1, middle):
-            _swap(column, weight, high - 1, middle)
-            if _less(column, weight, middle, low):
-                _swap(column, weight, middle, low)
-        _swap(column, weight, low, middle)
-        left, right = low, high
-        while True:
-            left += 1
-            while left < high and _less(column, weight, left, low):
-                left += 1
-            right -= 1
-            while _less(column, weight, low, right):
-                right -= 1
-            if left >= right:
-                break
-            _swap(column, weight, left, right)
-        _swap(column, weight, low, right)
-        stack[3 * top], stack[3 * top + 1], stack[3 * top + 2] = low, right, depth + 1
-        top += 1
-        stack[3 * top], stack[3 * top + 1], stack[3 * top + 2] = right + 1, high, depth + 1
-        top += 1
-
-
-@compiled
-def sort_rows(part: int, parts: int, cuts: Ints, start: Ints, column: Ids, weight: Floats, repeats: Ints) -> None:
-    """Sort each row by (column, weight); ``repeats[chunk]`` counts links equal to the one before."""
-    stack = np.empty(200, np.int64)
+def sort_buckets(
+    part: int,
+    parts: int,
+    cuts: Ints,
+    bucket: Ints,
+    packed: Ints,
+    weight: Floats,
+    source_bits: int,
+    shift: int,
+    column: Ids,
+) -> None:
+    """Sort the links of each bucket by (target, source) and write the sources out. Chunks are ranges of buckets."""
     for chunk in range(part, len(cuts) - 1, parts):
-        found = 0
-        for row in range(cuts[chunk], cuts[chunk + 1]):
-            _sort_row(column, weight, start[row], start[row + 1], stack)
-            for i in range(start[row] + 1, start[row + 1]):
-                if column[i] == column[i - 1]:
-                    found += 1
-        repeats[chunk] = found
+        for b in range(cuts[chunk], cuts[chunk + 1]):
+            first, size = bucket[b], bucket[b + 1] - bucket[b]
+            spare = np.empty(size, np.int64)
+            spare_weight = np.empty(size if len(weight) > 0 else 0)
+            back = False
+            low_bit = 0
+            while low_bit < 32 + shift:
+                _sort_digit(packed, weight, first, size, spare, spare_weight, low_bit, back)
+                back = not back
+                low_bit += DIGIT
+                if source_bits <= low_bit < 32:
+                    low_bit = 32
+            for i in range(size):
+                column[first + i] = (spare[i] if back else packed[first + i]) & 0xFFFFFFFF
+                if back and len(weight) > 0:
+                    weight[first + i] = spare_weight[i]
+
+
+@compiled
+def _sum_ascending(weight: Floats, first: int, end: int) -> float:
+    """Sum of a few entries from the smallest on; sorts them in place (by insertion: copies of one link are few)."""
+    total = 0.0
+    for i in range(first, end):
+        value = weight[i]
+        j = i
+        while j > first and weight[j - 1] > value:
+            weight[j] = weight[j - 1]
+            j -= 1
+        weight[j] = value
+    for i in range(first, end):
+        total += weight[i]
+    return total
 
 
 @compiled
 def merge_repeats(start: Ints, column: Ids, weight: Floats) -> int:
-    """Merge equal neighbours of sorted rows in place, weights added; returns how many links are left."""
+    """Merge equal neighbours of ascending rows in place; returns how many links are left.
+
+    Weights of one link are added from the smallest on, so their sum does not depend on the order they came in.
+    """
     kept = 0
     first = start[0]
     for row in range(len(start) - 1):
         last = start[row + 1]
-        begin = kept
-        for i in range(first, last):
-            if kept > begin and column[kept - 1] == column[i]:
-                if len(weight) > 0:
-                    weight[kept - 1] += weight[i]
-                continue
-            column[kept] = column[i]
+        while first < last:
+            end = first + 1
+            while end < last and column[end] == column[first]:
+                end += 1
+            column[kept] = column[first]
             if len(weight) > 0:
-                weight[kept] = weight[i]
+                weight[kept] = _sum_ascending(weight, first, end)
             kept += 1
+            first = end
         start[row + 1] = kept
-        first = last
     return kept
-
-
-@compiled
-def move_rows(
-    part: int,
-    parts: int,
-    cuts: Ints,
-    start: Ints,
-    column: Ids,
-    weight: Floats,
-    order: Ids,
-    place: Ids,
-    new_start: Ints,
-    new_column: Ids,
-    new_weight: Floats,
-) -> None:
-    """Row i of the result is row order[i], its columns renumbered by ``place`` and sorted again."""
-    stack = np.empty(200, np.int64)
-    for chunk in range(part, len(cuts) - 1, parts):
-        for row in range(cuts[chunk], cuts[chunk + 1]):
-            at = new_start[row]
-            old = order[row]
-            for i in range(start[old], start[old + 1]):
-                new_column[at] = place[column[i]]
-                if len(weight) > 0:
-                    new_weight[at] = weight[i]
-                at += 1
-            _sort_row(new_column, new_weight, new_start[row], at, stack)
-
-
-@compiled
-def turn_rows(start: Ints, column: Ids, weight: Floats, new_start: Ints, new_column: Ids, new_weight: Floats) -> None:
-    """The reversed links, with row and column numbers counted from the end so that what was last comes first."""
-    n = len(start) - 1
-    new_start[:] = 0
-    for i in range(len(column)):
-        new_start[n - column[i]] += 1
-    for row in range(n):
-        new_start[row + 1] += new_start[row]
-    for row in range(n - 1, -1, -1):
-        for i in range(start[row], start[row + 1]):
-            key = n - 1 - column[i]
-            at = new_start[key]
-            new_column[at] = n - 1 - row
-            if len(weight) > 0:
-                new_weight[at] = weight[i]
-            new_start[key] = at + 1
-    for row in range(n, 0, -1):
-        new_start[row] = new_start[row - 1]
-    new_start[0] = 0
 
 
 @compiled

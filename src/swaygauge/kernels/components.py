@@ -7,9 +7,10 @@ from swaygauge.records import Ids, Ints
 
 
 @compiled
-def strong_components(start: Ints, column: Ids, label: Ids, stack: Ids, entered: Ids, at: Ints) -> int:
+def strong_components(start: Ints, column: Ids, out_degree: Ids, label: Ids, stack: Ids, entered: Ids, at: Ints) -> int:
     """Label each row with its strong component, 0, 1, ... so that links only lead from lower to higher labels.
 
+    Rows without in-links come first and rows that are in nobody's row (out_degree 0) last; neither needs a search.
     Rows hold in-links, so a component is complete, and numbered, after everything upstream of it. Iterative, one label
     array; Pearce 2016, "A space-efficient algorithm for finding strongly connected components", IPL 116. ``label``,
     ``stack``, ``entered`` and ``at`` are work space of n entries each. Returns the number of components.
@@ -18,10 +19,14 @@ def strong_components(start: Ints, column: Ids, label: Ids, stack: Ids, entered:
     label[:] = 0
     index = 1  # next visiting number; finished components count down from n and stay above every visiting number
     finished = n
+    for row in range(n):
+        if start[row + 1] == start[row]:
+            label[row] = finished
+            finished -= 1
     depth = 0  # the path being walked grows from the front of ``stack``, open rows from its back
     open_rows = n
     for root in range(n):
-        if label[root] != 0:
+        if label[root] != 0 or out_degree[root] == 0:
             continue
         stack[0] = root
         at[0] = start[root]
@@ -67,6 +72,9 @@ def strong_components(start: Ints, column: Ids, label: Ids, stack: Ids, entered:
                 open_rows -= 1
                 stack[open_rows] = row
     for row in range(n):
+        if label[row] == 0:
+            label[row] = finished
+            finished -= 1
         label[row] = n - label[row]
     return n - finished
 
@@ -101,44 +109,6 @@ def gather_components(label: Ids, by_degree: Ids, start: Ints, order: Ids) -> No
     for c in range(len(start) - 1, 0, -1):
         start[c] = start[c - 1]
     start[0] = 0
-
-
-@compiled
-def relabel(label: Ids, size: Ints, free: Ids, loose: Ids, new_label: Ids) -> None:
-    """New numbers for components: un-endorsed single rows first, dangling single rows last, the rest as they were.
-
-    free[row] = 0 when the row has no in-link; loose[row] = 0 when it has no out-link. ``new_label`` (components,) is
-    the new number of each old one.
-    """
-    count = len(size)
-    new_label[:] = 1
-    for row in range(len(label)):
-        c = label[row]
-        if size[c] == 1:
-            if free[row] == 0:
-                new_label[c] = 0
-            elif loose[row] == 0:
-                new_label[c] = 2
-    first = 0
-    middle = 0
-    for c in range(count):
-        if new_label[c] == 0:
-            first += 1
-        elif new_label[c] == 1:
-            middle += 1
-    at_first, at_middle, at_last = 0, first, first + middle
-    for c in range(count):
-        if new_label[c] == 0:
-            new_label[c] = at_first
-            at_first += 1
-        elif new_label[c] == 1:
-            new_label[c] = at_middle
-            at_middle += 1
-        else:
-            new_label[c] = at_last
-            at_last += 1
-    for row in range(len(label)):
-        label[row] = new_label[label[row]]
 
 
 @compiled

@@ -40,6 +40,23 @@ def mark_upstream(start: Ints, source: Ids, component_start: Ints, mark: Flags) 
 
 
 @compiled
+def last_in_line(start: Ints, source: Ids, component_start: Ints, chosen: Flags, last: Flags) -> None:
+    """last[c]: component c is chosen and reaches no other chosen one."""
+    n = len(start) - 1
+    leads = np.zeros(n, np.bool_)  # leads to a chosen component
+    for c in range(len(component_start) - 2, -1, -1):
+        low, high = component_start[c], component_start[c + 1]
+        hit = False
+        for row in range(low, high):
+            hit = hit or leads[row]
+        last[c] = chosen[c] and not hit
+        if hit or chosen[c]:
+            for row in range(low, high):
+                for i in range(start[row], start[row + 1]):
+                    leads[source[i]] = True
+
+
+@compiled
 def bracket_small(
     start: Ints,
     source: Ids,
@@ -57,12 +74,12 @@ def bracket_small(
 ) -> float:
     """Collatz-Wielandt brackets on the spectral radius of components, inner links only; returns the best lower bound.
 
-    Component chosen[k] is left alone when its ceiling[k] does not exceed the best lower bound, or when it is large.
+    Component chosen[k] is left alone when its ceiling[k] is below the best lower bound, or when it is large.
     Any positive vector gives a proven bracket (Collatz 1942); power steps on (inner links + shift) narrow it until it
     is within ``gap``, or below the best lower bound, or ``most_sweeps`` have passed. ``unit`` widens for rounding.
     """
     for k in range(len(chosen)):
-        if ceiling[k] <= best:
+        if ceiling[k] < best:
             continue
         low, high = component_start[chosen[k]], component_start[chosen[k] + 1]
         if start[high] - start[low] > most_links:
@@ -88,7 +105,7 @@ def bracket_small(
             below = max(below, least * (1.0 - slack) - shift)
             over = min(over, most * (1.0 + slack) - shift)
             best = max(best, below)
-            if over - below <= gap * below or over <= best:
+            if over - below <= gap * below or over < best:
                 break
             shift = 0.5 * np.sqrt(below * over)
             for i in range(size):

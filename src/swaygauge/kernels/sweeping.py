@@ -253,6 +253,7 @@ def publish(
     source: Ids,
     weight: Floats,
     z: Floats,
+    image: Floats,
     beta: Floats,
     alpha: float,
     strength: Floats,
@@ -264,8 +265,9 @@ def publish(
 ) -> None:
     """x = beta + alpha * (row sum of z), and ``miss`` = how far z is from reproducing itself, rounding included.
 
-    z stands for the values z * strength (z itself without strength). A row that is nobody's source (from ``sources``
-    on, or of strength 0) stands for x itself. Per chunk: totals = the largest miss / (beta - |x - value|), the largest
+    z stands for the values z * strength (z itself without strength). Where ``image`` is not NaN it is what z leads to,
+    in the terms of z, and the row is not summed again. A row that is nobody's source (from ``sources`` on, or of
+    strength 0) stands for x itself. Per chunk: totals = the largest miss / (beta - |x - value|), the largest
     |x - value| / beta, the smallest z of a source.
     """
     for chunk in range(part, len(cuts) - 1, parts):
@@ -273,7 +275,9 @@ def publish(
         residual = 0.0
         smallest = np.inf
         for i in range(cuts[chunk], cuts[chunk + 1]):
-            new = beta[i] + alpha * _row_sum(source, weight, start[i], start[i + 1], z, 0)
+            new = image[i] * strength[i] if len(strength) > 0 else image[i]
+            if np.isnan(new):
+                new = beta[i] + alpha * _row_sum(source, weight, start[i], start[i + 1], z, 0)
             value = new
             if i < sources and (len(strength) == 0 or strength[i] > 0.0):
                 value = z[i] * strength[i] if len(strength) > 0 else z[i]
@@ -303,6 +307,7 @@ def check_above(
     source: Ids,
     weight: Floats,
     y: Floats,
+    image: Floats,
     miss: Floats,
     alpha: float,
     strength: Floats,
@@ -311,7 +316,7 @@ def check_above(
     above: Floats,
     totals: Floats,
 ) -> None:
-    """above = miss + alpha * (row sum of y), rounded up.
+    """above = miss + alpha * (row sum of y), rounded up; ``image`` as in :func:`publish`.
 
     Per chunk, over sources: totals = the largest (above - value of y) / miss, the smallest y.
     """
@@ -319,7 +324,10 @@ def check_above(
         largest = -np.inf
         smallest = np.inf
         for i in range(cuts[chunk], cuts[chunk + 1]):
-            high = (miss[i] + alpha * _row_sum(source, weight, start[i], start[i + 1], y, 0)) * (1.0 + unit)
+            high = image[i] * strength[i] if len(strength) > 0 else image[i]
+            if np.isnan(high):
+                high = miss[i] + alpha * _row_sum(source, weight, start[i], start[i + 1], y, 0)
+            high *= 1.0 + unit
             above[i] = high
             if i < sources and (len(strength) == 0 or strength[i] > 0.0):
                 value = y[i] * strength[i] if len(strength) > 0 else y[i]
@@ -394,3 +402,19 @@ def add_up(part: int, parts: int, cuts: Ints, basis: Floats, factor: Floats, vec
         for j in range(len(factor)):
             for i in range(a, b):
                 vector[i] += factor[j] * basis[j, i]
+
+
+@compiled
+def rotate(part: int, parts: int, cuts: Ints, basis: Floats, rotation: Floats) -> None:
+    """The first rotation.shape[1] vectors of basis become combinations of its first rotation.shape[0], in place."""
+    used, kept = rotation.shape
+    old = np.empty(used)
+    for chunk in range(part, len(cuts) - 1, parts):
+        for i in range(cuts[chunk], cuts[chunk + 1]):
+            for j in range(used):
+                old[j] = basis[j, i]
+            for k in range(kept):
+                total = 0.0
+                for j in range(used):
+                    total += old[j] * rotation[j, k]
+                basis[k, i] = total

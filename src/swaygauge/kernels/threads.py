@@ -34,6 +34,11 @@ class _Crew:
 _CREW = _Crew()
 
 
+def thread_count() -> int:
+    """How many threads sweeps may use."""
+    return _CREW.size
+
+
 def use_threads(count: int) -> int:
     """Set how many threads sweeps may use (at least 1); returns the previous number. Results do not depend on it."""
     before = _CREW.size

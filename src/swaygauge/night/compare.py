@@ -4,32 +4,19 @@ from __future__ import annotations
 
 import dataclasses
 from collections.abc import Mapping
-from dataclasses import replace
 from datetime import date
 from typing import Any
 
 import numpy as np
 
-from swaygauge.detect import (
-    DetectorState,
-    LeadingPair,
-    NightInputs,
-    Ring,
-    detect,
-    in_degree,
-    is_lambda_jump,
-    name_ring,
-)
+from swaygauge.detect import DetectorState, NightInputs, detect
 from swaygauge.moves import compare_scores, network_move
 from swaygauge.night.history import History, history_of
 from swaygauge.night.result import StageResult
-from swaygauge.night.scoring import graph_of
+from swaygauge.night.steps import compared_inputs, first_inputs, graph_of
 from swaygauge.night.work import Work
-from swaygauge.overlap import link_keys
 from swaygauge.records import (
-    GONE,
     Alert,
-    Flags,
     Ids,
     LinkBook,
     LinkChanges,
@@ -40,7 +27,7 @@ from swaygauge.records import (
     Verdict,
 )
 from swaygauge.scores import SCORES
-from swaygauge.scores.spectrum import bound_lambda, leading_vectors
+from swaygauge.scores.spectrum import bound_lambda
 
 
 def stage_alerts(work: Work, night: date, alerts: tuple[Alert, ...]) -> None:
@@ -91,41 +78,6 @@ def _moves(work: Work, history: History, night: date) -> dict[str, Moves]:
     return moves
 
 
-def _without(book: LinkBook, changes: LinkChanges, rows: Flags) -> LinkBook:
-    """The book with what was added on these rows of the changes taken back: new links gone, old weights restored."""
-    taken = np.flatnonzero(rows)
-    keys = link_keys(book.target, book.source)
-    at = np.searchsorted(keys, link_keys(changes.target[taken], changes.source[taken]))
-    state = book.state.copy()
-    state[at[changes.before[taken] == 0.0]] = GONE
-    weight = book.weight
-    if weight is not None:
-        weight = weight.copy()
-        kept = changes.before[taken] > 0.0
-        weight[at[kept]] = changes.before[taken[kept]]
-    return replace(book, state=state, weight=weight)
-
-
-def _ring(work: Work, book: LinkBook, changes: LinkChanges, lambda_before: float) -> Ring:
-    """Which nodes carry tonight's jump of lambda."""
-    scored = graph_of(book)
-    vectors = leading_vectors(scored.graph)
-
-    def lambda_without(rows: Flags) -> float:
-        return bound_lambda(graph_of(_without(book, changes, rows)).graph).upper
-
-    pair = LeadingPair(ids=scored.ids, right=vectors.right, left=vectors.left, lambda_without=lambda_without)
-    limits = work.settings.alerts.network
-    return name_ring(
-        changes,
-        pair,
-        lambda_before,
-        back_to=limits.lambda_back_to,
-        or_to=1.0 + limits.lambda_jump,
-        least_mass=limits.ring_mass,
-    )
-
-
 def _watched(work: Work, names: tuple[str, ...]) -> Ids:
     ids = work.store.names(work.network).lookup(list(names)) if names else np.empty(0, np.int32)
     return np.unique(ids[ids >= 0]).astype(np.int32)
@@ -151,9 +103,7 @@ def _inputs(work: Work, history: History, night: date) -> NightInputs:
     book = store.record(LinkBook, network, night, kind="book", staged=True)
     bounds = store.record(SpectralBounds, network, night, kind="bounds", staged=True)
     if before is None:
-        nothing = LinkChanges(*(np.empty(0, kind) for kind in ("i4", "i4", "u1", "f8", "f8", "?")))
-        none = np.zeros(common["nodes"], np.int64)
-        return NightInputs(**common, book=book, changes=nothing, in_degree_before=none, bounds_now=bounds)
+        return first_inputs(common, book, bounds)
     changes = store.record(LinkChanges, network, night, kind="changes", staged=True)
     adjusted = store.has_part(network, night, kind="adjusted", staged=True)
     base = store.record(LinkBook, network, night, kind="adjusted", staged=True) if adjusted else history.book()
@@ -163,17 +113,16 @@ def _inputs(work: Work, history: History, night: date) -> NightInputs:
         if adjusted
         else store.record(SpectralBounds, network, before.night, kind="bounds")
     )
-    jumped = is_lambda_jump(bounds_before, bounds, jump=work.settings.alerts.network.lambda_jump)
-    return NightInputs(
-        **common,
-        book=book,
-        changes=changes,
-        upkeep=store.record(Upkeep, network, night, kind="upkeep", staged=True),
-        in_degree_before=in_degree(base, common["nodes"]),
-        moves=_moves(work, history, night),
+    return compared_inputs(
+        common,
+        book,
+        changes,
+        base=base,
         bounds_before=bounds_before,
-        bounds_now=bounds,
-        ring=_ring(work, book, changes, bounds_before.upper) if jumped else None,
+        bounds=bounds,
+        thresholds=work.settings.alerts,
+        upkeep=store.record(Upkeep, network, night, kind="upkeep", staged=True),
+        moves=_moves(work, history, night),
         rescored=store.has_part(network, night, kind="bridge", score="katz", staged=True),
         watch_ids=_watched(work, work.settings.alerts.watch_names),
     )

@@ -6,12 +6,11 @@ from dataclasses import dataclass
 from datetime import date
 from functools import cached_property
 
+from swaygauge.night.steps import LOOK_BACK, trailing_profiles
 from swaygauge.night.work import Work
 from swaygauge.records import Ids, LinkBook, Profile, Snapshot, Verdict
 from swaygauge.store.rows import NightRow
 
-LOOK_BACK = 28  # accepted nights among which the fine ones are looked for
-TRAILING = 14  # accepted nights that medians and spreads rest on (method: 14)
 HELD_IN_A_ROW = 2  # held nights before this one that a new baseline is judged on
 
 
@@ -83,17 +82,12 @@ class History:
     @property
     def baseline_profiles(self) -> list[Profile]:
         """Profiles of the accepted nights since the last change of baseline, oldest first, at most 14."""
-        profiles: list[Profile] = []
-        for profile, verdict in self._judged:
-            if verdict.starts_baseline:
-                profiles = []
-            profiles.append(profile)
-        return profiles[-TRAILING:]
+        return trailing_profiles(self._judged)[0]
 
     @property
     def fine_profiles(self) -> list[Profile]:
         """Profiles of the last nights that were accepted as fine, oldest first, at most 14."""
-        return [profile for profile, verdict in self._judged if verdict.outcome == "fine"][-TRAILING:]
+        return trailing_profiles(self._judged)[1]
 
 
 def history_of(work: Work, night: date) -> History:

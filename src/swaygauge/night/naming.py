@@ -4,11 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from datetime import date
+from typing import Any, Final
 
+import numpy as np
+
+from swaygauge.moves import entered_left_top
 from swaygauge.night.work import Work
 from swaygauge.readers.aliases import Resolved, resolve
-from swaygauge.records import Alert
+from swaygauge.records import Alert, Ids, Moves
+from swaygauge.scores import SCORES
+from swaygauge.scores.leaks import LeakReport
 from swaygauge.store.rows import AliasRow
+
+NAMED_AT_MOST: Final = 10
 
 
 def first_seen(work: Work) -> Callable[[str], date | None]:
@@ -44,6 +52,26 @@ def shown_names(work: Work, night: date, nodes: set[int]) -> dict[int, str]:
     texts = dict(zip(ordered, table.texts(ordered), strict=True))
     shown = resolved(work, night).shown
     return {node: shown.get(text, text) for node, text in texts.items()}
+
+
+def name_the_top(work: Work, night: date) -> dict[str, Any]:
+    """Who entered and who left the top of each score, and which endorsed nodes eigenvector centrality zeroes.
+
+    Of each list the first NAMED_AT_MOST names, best place (most endorsed) first, and the number of all.
+    """
+    store, network = work.store, work.network
+    depth = work.settings.scores.top
+    lists: dict[str, Ids] = {"zeroed": store.record(LeakReport, network, night, kind="leaks", staged=True).ids}
+    for score in SCORES:
+        if store.has_part(network, night, kind="moves", score=score, staged=True):
+            moves = store.record(Moves, network, night, kind="moves", score=score, staged=True)
+            entered, left = entered_left_top(moves, depth)
+            for word, ids, rank in (("entered", entered, moves.rank_now), ("left", left, moves.rank_before)):
+                places = rank[np.searchsorted(moves.ids, ids)]
+                lists[f"{word}.{score}"] = ids[np.lexsort((ids, places))]
+    told = {key: ids[:NAMED_AT_MOST].tolist() for key, ids in lists.items()}
+    names = shown_names(work, night, {node for nodes in told.values() for node in nodes})
+    return {key: {"count": len(lists[key]), "names": [names[node] for node in nodes]} for key, nodes in told.items()}
 
 
 def alias_rows(work: Work, night: date) -> list[AliasRow]:

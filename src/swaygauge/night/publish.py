@@ -7,7 +7,7 @@ from datetime import date
 from swaygauge.episodes import describe
 from swaygauge.night.compare import staged_alerts
 from swaygauge.night.history import History, history_of
-from swaygauge.night.naming import alias_rows, nodes_named, shown_names
+from swaygauge.night.naming import alias_rows, name_the_top, nodes_named, shown_names
 from swaygauge.night.result import StageResult
 from swaygauge.night.work import Work, basis_of, side_digest_of
 from swaygauge.records import Pin, Snapshot, SpectralBounds, Verdict
@@ -58,6 +58,8 @@ def publish(work: Work, night: date) -> StageResult:
     names = shown_names(work, night, nodes_named(alerts))
     printable = {node: visible(name) for node, name in names.items()}
     verdict = work.store.record(Verdict, work.network, night, kind="verdict", staged=True)
+    if verdict.outcome != "hold":
+        work.store.stage_fact(work.network, night, name="named", value=name_the_top(work, night))
     row = work.store.publish(
         _row(work, night, history),
         checks=verdict.results,

@@ -115,6 +115,7 @@ def run_due(
             tell(outcome)
 
     with work.store.lock(work.network):
+        work.store.sweep(work.network)
         for due in due_nights(work, start=start, end=end, again=again):
             if not isinstance(due, Due):
                 note(Outcome(None, "unclear", "", str(due)))

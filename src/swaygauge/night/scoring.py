@@ -2,98 +2,51 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
 from datetime import date
 
 import numpy as np
 
-from swaygauge.graph import Graph
 from swaygauge.night.history import History, history_of
+from swaygauge.night.naming import resolved
 from swaygauge.night.result import StageResult
+from swaygauge.night.steps import Scored, era_pin, graph_of, solve_scores
 from swaygauge.night.work import Work
 from swaygauge.readers.lists import read_values
-from swaygauge.records import Floats, Ids, LinkBook, Pin, ScoreSet, SpectralBounds, Verdict, frozen
-from swaygauge.scores import SCORES, Solution
-from swaygauge.scores.katz import pin_alpha
+from swaygauge.records import Floats, Ids, LinkBook, Pin, ScoreSet, SpectralBounds, Verdict
+from swaygauge.scores import SCORES, FairshareOptions, KatzOptions
 from swaygauge.scores.leaks import leak_report
-from swaygauge.scores.ranks import rank_places
 from swaygauge.scores.spectrum import bound_lambda
 
 
-@dataclass(frozen=True)
-class Scored:
-    """The effective links of one night as a graph over compact positions; ``ids[position]`` is the node."""
-
-    ids: Ids
-    graph: Graph
-
-
-def graph_of(book: LinkBook) -> Scored:
-    """The graph of the links in effect."""
-    on = book.in_effect
-    source, target = book.source[on], book.target[on]
-    ids = np.unique(np.concatenate([source, target])).astype(np.int32)
-    place = np.searchsorted(ids, source).astype(np.int32), np.searchsorted(ids, target).astype(np.int32)
-    weight = None if book.weight is None else book.weight[on]
-    return Scored(frozen(ids), Graph(len(ids), place[0], place[1], weight=weight))
-
-
-def own_importance(work: Work, ids: Ids, default: float) -> float | Floats:
+def own_importance(work: Work, night: date, ids: Ids, default: float) -> float | Floats:
     """beta: one number for all, or one per node where the settings name a file of them."""
     file = work.beside(work.settings.snapshots.beta)
     if file is None:
         return default
     told = read_values(file, normalise=work.settings.reader.normalise_hosts).values
-    names = list(told)
-    nodes = work.store.names(work.network).lookup(names)
+    canonical = resolved(work, night).canonical
+    nodes = work.store.names(work.network).lookup([canonical.get(name, name) for name in told])
     beta = np.full(len(ids), default)
-    for node, name in zip(nodes.tolist(), names, strict=True):
-        place = int(np.searchsorted(ids, node))
-        if node >= 0 and place < len(ids) and ids[place] == node:
-            beta[place] = told[name]
+    place = np.minimum(np.searchsorted(ids, nodes), len(ids) - 1)
+    here = ids[place] == nodes
+    beta[place[here]] = np.array(list(told.values()))[here]
     return beta
 
 
-def as_score_set(night: date, score: str, ids: Ids, solution: Solution) -> ScoreSet:
-    """A proven solution with its ranks, over persistent ids."""
-    rank, best, worst = rank_places(solution.value, solution.bound)
-    return ScoreSet(
-        night=night,
-        score=score,
-        alpha=solution.alpha,
-        ids=ids,
-        value=frozen(solution.value),
-        bound=frozen(solution.bound),
-        rank=frozen(rank),
-        best=frozen(best),
-        worst=frozen(worst),
-        residual=solution.residual,
-        sweeps=solution.sweeps,
-    )
-
-
 def solve_all(work: Work, night: date, scored: Scored, pin: Pin) -> dict[str, ScoreSet]:
-    """Every score of SCORES on one graph."""
-    done = {}
-    for name, score in SCORES.items():
-        options = getattr(work.settings.scores, name)
-        beta = own_importance(work, scored.ids, options.beta)
-        solution = score.solve(scored.graph, options=options, alpha=pin.alpha, beta=beta)
-        done[name] = as_score_set(night, name, scored.ids, solution)
-    return done
+    """Every score of SCORES on one graph, as the settings say."""
+    options: dict[str, KatzOptions | FairshareOptions] = {name: getattr(work.settings.scores, name) for name in SCORES}
+    beta = {name: own_importance(work, night, scored.ids, option.beta) for name, option in options.items()}
+    return solve_scores(night, scored, pin, options=options, beta=beta)
 
 
 def _pin(work: Work, history: History, night: date, bounds: SpectralBounds) -> tuple[Pin, bool]:
-    """alpha of the era, and whether tonight starts one. Legal on last night's graph too, which may be re-scored."""
-    before = history.previous
-    options = work.settings.scores.katz
+    before, options = history.previous, work.settings.scores.katz
     if before is None:
-        return pin_alpha(None, bounds, night=night, options=options)
-    store = work.store
-    pinned = store.record(Pin, work.network, before.night, kind="pin")
-    last = store.record(SpectralBounds, work.network, before.night, kind="bounds")
-    both = replace(bounds, lower=max(bounds.lower, last.lower), upper=max(bounds.upper, last.upper))
-    return pin_alpha(pinned, both, night=night, options=options)
+        return era_pin(None, None, bounds, night=night, options=options)
+    pinned = work.store.record(Pin, work.network, before.night, kind="pin")
+    last = work.store.record(SpectralBounds, work.network, before.night, kind="bounds")
+    return era_pin(pinned, last, bounds, night=night, options=options)
 
 
 def _bridge(work: Work, history: History, night: date, pin: Pin, now: dict[str, ScoreSet]) -> int:

@@ -12,21 +12,22 @@ from datetime import date
 import numpy as np
 
 from swaygauge.checks.profile import measure
-from swaygauge.checks.verdict import accept_anyway, judge, rebaseline, rebaseline_due
+from swaygauge.checks.verdict import judge
 from swaygauge.effective import advance, comparable_before, start_book
 from swaygauge.errors import InputError
 from swaygauge.night.compare import compare
-from swaygauge.night.history import History, history_of
+from swaygauge.night.history import history_of
 from swaygauge.night.naming import resolved
 from swaygauge.night.publish import publish
 from swaygauge.night.result import StageResult
 from swaygauge.night.scoring import score
+from swaygauge.night.steps import known_now, settled
 from swaygauge.night.work import Work
 from swaygauge.readers import read_links
 from swaygauge.readers.aliases import apply_aliases
 from swaygauge.readers.lists import read_names
 from swaygauge.readers.snapshot import make_snapshot
-from swaygauge.records import Ids, LinkBook, Profile, Snapshot, Verdict
+from swaygauge.records import Ids, Snapshot, Verdict
 
 
 def _fetched_ids(work: Work, night: date, canonical: dict[str, str]) -> Ids | None:
@@ -56,38 +57,20 @@ def ingest(work: Work, night: date) -> StageResult:
     return StageResult(snapshot.origin.rows, f"{len(snapshot.source)} links from {snapshot.origin.file}")
 
 
-def _verdict(work: Work, history: History, snapshot: Snapshot, profile: Profile) -> Verdict:
-    verdict = judge(profile, work.settings.checks, fine_nights=history.fine_profiles)
-    if verdict.outcome == "hold":
-        if snapshot.night in work.accepted_by_hand():
-            return accept_anyway(verdict)
-        if rebaseline_due(verdict, history.held_snapshots(), snapshot, work.settings.checks):
-            return rebaseline(verdict)
-    return verdict
-
-
 def check(work: Work, night: date) -> StageResult:
     """Raw snapshot -> profile -> verdict."""
     history = history_of(work, night)
     snapshot = work.store.record(Snapshot, work.network, night, kind="raw", staged=True)
     book, known = history.book(), history.known()
     profile = measure(snapshot, book, trailing=history.baseline_profiles, known_nodes=known["id"] if known else None)
-    verdict = _verdict(work, history, snapshot, profile)
+    verdict = judge(profile, work.settings.checks, fine_nights=history.fine_profiles)
+    if verdict.outcome == "hold":
+        by_hand = night in work.accepted_by_hand()
+        held = history.held_snapshots()
+        verdict = settled(verdict, snapshot, held, limits=work.settings.checks, by_hand=by_hand)
     work.store.stage_record(work.network, night, kind="profile", record=profile)
     work.store.stage_record(work.network, night, kind="verdict", record=verdict)
     return StageResult(len(verdict.results), verdict.outcome + "".join(f"; {reason}" for reason in verdict.reasons))
-
-
-def _known_now(night: date, known: dict[str, Ids] | None, book: LinkBook) -> dict[str, Ids]:
-    """Every node of any effective snapshot so far, with the night (ordinal) it was first there."""
-    ids = np.unique(np.concatenate([book.source[book.in_effect], book.target[book.in_effect]])).astype(np.int32)
-    first = np.full(len(ids), night.toordinal(), np.int32)
-    if known is None:
-        return {"id": ids, "first_night": first}
-    new = ~np.isin(ids, known["id"], assume_unique=True)
-    every = np.concatenate([known["id"], ids[new]])
-    order = np.argsort(every, kind="stable")
-    return {"id": every[order], "first_night": np.concatenate([known["first_night"], first[new]])[order]}
 
 
 def prepare(work: Work, night: date) -> StageResult:
@@ -111,7 +94,7 @@ def prepare(work: Work, night: date) -> StageResult:
             store.stage_record(network, night, kind="adjusted", record=adjusted)
         detail = f"{upkeep.carried_links} carried, {upkeep.waiting_links} waiting"
     store.stage_record(network, night, kind="book", record=book)
-    store.stage_part(network, night, kind="known", columns=_known_now(night, history.known(), book))
+    store.stage_part(network, night, kind="known", columns=known_now(night, history.known(), book))
     return StageResult(int(book.in_effect.sum()), detail)
 
 

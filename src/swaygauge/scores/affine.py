@@ -35,8 +35,8 @@ class Problem:
         h = beta * scale if len(scale) else beta
         if start is not None and len(scale):
             start = start * scale
-        z, sweeps = solve(self.system, h, tolerance=tolerance, start=start)
-        return prove(self.system, z, beta, self.strength, sweeps=sweeps, yardstick=yardstick, legal=self.legal)
+        solved = solve(self.system, h, tolerance=tolerance, start=start)
+        return prove(self.system, solved, beta, self.strength, yardstick=yardstick, legal=self.legal)
 
 
 def plain_problem(graph: Graph, alpha: float) -> Problem:

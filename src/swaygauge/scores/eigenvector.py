@@ -24,6 +24,6 @@ def eigenvector(graph: Graph) -> Floats:
     >>> eigenvector(Graph(3, [0, 1], [1, 2])).tolist()
     [0.0, 0.0, 0.0]
     """
-    value, _ = leading_right(graph)
+    value = leading_right(graph)
     length = float(np.sqrt(np.sum(value * value)))
     return value / length if length > 0.0 else value

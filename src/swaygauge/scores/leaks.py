@@ -9,7 +9,7 @@ import numpy as np
 from swaygauge.graph import Graph
 from swaygauge.kernels import spreading
 from swaygauge.records import Flags, Ids, Ints, SpectralBounds, frozen
-from swaygauge.scores.spectrum import bound_lambda
+from swaygauge.scores.spectrum import bound_lambda, leading_components
 
 
 @dataclass(frozen=True, eq=False)
@@ -35,8 +35,8 @@ class LeakReport:
 def leak_report(graph: Graph, *, bounds: SpectralBounds | None = None, named: int = 1000) -> LeakReport:
     """Count and name what eigenvector centrality leaves at zero, exactly, from the structure alone.
 
-    A node scores above zero only on a component that attains lambda (``bounds.component``) or downstream of it. At most
-    ``named`` nodes are listed, all are counted.
+    A node scores above zero only on a component that attains lambda, the last such in line, or downstream of it. At
+    most ``named`` nodes are listed, all are counted.
 
     >>> report = leak_report(Graph(4, [0, 1, 2], [1, 2, 3]))
     >>> report.zeroed_count, report.ids.tolist(), report.lambda_upper
@@ -45,16 +45,16 @@ def leak_report(graph: Graph, *, bounds: SpectralBounds | None = None, named: in
     bounds = bound_lambda(graph) if bounds is None else bounds
     rows, size = graph.rows, graph.component_sizes()
     degree = graph.in_degree()
-    fed = _downstream(graph, bounds.component)[graph.place]
+    fed = _downstream(graph, leading_components(graph))[graph.place]
     zeroed = np.flatnonzero(~fed & (degree > 0))
     listed = zeroed[np.argsort(-degree[zeroed], kind="stable")][:named]
     upstream = downstream = 0.0
     if graph.n:
         big = int(np.argmax(size))
-        above = _marked(graph, big)
+        above = _marked(graph, np.array([big]))
         spreading.mark_upstream(rows.start, rows.source, rows.component_start, above)
         upstream = float(above.sum() - size[big]) / graph.n
-        downstream = float(_downstream(graph, big).sum() - size[big]) / graph.n
+        downstream = float(_downstream(graph, np.array([big])).sum() - size[big]) / graph.n
     return LeakReport(
         components=graph.component_count,
         nontrivial=int((size > 1).sum()),
@@ -69,18 +69,18 @@ def leak_report(graph: Graph, *, bounds: SpectralBounds | None = None, named: in
     )
 
 
-def _marked(graph: Graph, component: int) -> Flags:
-    """(n,) by position: True on one component, on none for -1."""
+def _marked(graph: Graph, chosen: Ints) -> Flags:
+    """(n,) by position: True on some components."""
     mark = np.zeros(graph.n, np.bool_)
-    if component >= 0:
+    for component in chosen:
         low, high = graph.rows.component_start[component : component + 2]
         mark[low:high] = True
     return mark
 
 
-def _downstream(graph: Graph, component: int) -> Flags:
-    """(n,) by position: one component and what it reaches."""
-    mark = _marked(graph, component)
+def _downstream(graph: Graph, chosen: Ints) -> Flags:
+    """(n,) by position: some components and what they reach."""
+    mark = _marked(graph, chosen)
     rows = graph.rows
     spreading.mark_downstream(rows.start, rows.source, rows.component_start, mark)
     return mark

@@ -9,7 +9,7 @@ With K = alpha * (links, scaled), values x and miss_i >= |(beta + K x - x)_i| (r
 
 The first bound costs the one sweep that publishes the values. The second is tighter: y comes from a loose solve for
 ``miss`` and is checked, not trusted, by one more sweep. ROUNDING covers one row: 25 units for the sum (see
-kernels/sweeping.py), its product and addition, the stored out-strength and quotient, and the formation of the bound.
+kernels/sweeping.py), products and additions, the stored out-strength and its quotient, the formation of the bound.
 """
 
 from __future__ import annotations
@@ -23,10 +23,10 @@ from swaygauge.errors import NotConverged
 from swaygauge.kernels import sweeping
 from swaygauge.kernels.threads import in_parts
 from swaygauge.records import Floats
-from swaygauge.scores.solve import System, solve
+from swaygauge.scores.solve import Solved, System, solve
 
-ROUNDING = 40 * 2.0**-53
-LOOSE = 0.3  # how well the bound itself is solved for, relative to the miss: it is at most 1 / (1 - .3) too wide
+ROUNDING = 48 * 2.0**-53
+LOOSE = 0.4  # how well the bound itself is solved for, relative to the miss: it is at most 1 / (1 - .4) too wide
 
 
 @dataclass(frozen=True, eq=False)
@@ -42,15 +42,14 @@ class Proof:
 
 def prove(
     system: System,
-    z: Floats,
+    solved: Solved,
     beta: Floats,
     strength: Floats,
     *,
-    sweeps: int,
     legal: Callable[[], bool],
     yardstick: Proof | None = None,
 ) -> Proof:
-    """The values that z leads to, with their bounds.
+    """The values that an approximate solution leads to, with their bounds.
 
     strength (n,) is the out-strength by position, or of length 0 where z are the values themselves. Where beta is 0
     somewhere, ``yardstick`` is the proof for a beta > 0 on the same network. ``legal`` is asked for another proof that
@@ -66,7 +65,8 @@ def prove(
         rows.start,
         rows.source,
         rows.weight,
-        z,
+        solved.z,
+        solved.image,
         beta,
         system.alpha,
         strength,
@@ -94,7 +94,7 @@ def prove(
             f"the values could not be proven (residual / beta = {residual:.3g}, smallest value {smallest:.3g}, "
             f"alpha = {system.alpha:.12g}). Use a smaller alpha or a smaller tolerance."
         )
-    return Proof(x, bound, (beta - miss) * (1.0 - ROUNDING), residual, sweeps + 1 + more)
+    return Proof(x, bound, (beta - miss) * (1.0 - ROUNDING), residual, solved.sweeps + 1 + more)
 
 
 def _closer_bound(system: System, miss: Floats, strength: Floats) -> tuple[Floats | None, int]:
@@ -102,7 +102,7 @@ def _closer_bound(system: System, miss: Floats, strength: Floats) -> tuple[Float
     rows = system.rows
     h = miss * system.scale if len(system.scale) else miss
     try:
-        y, sweeps = solve(system, h, tolerance=LOOSE)
+        loose = solve(system, h, tolerance=LOOSE)
     except NotConverged:
         return None, 0
     above = np.empty(rows.n)
@@ -113,7 +113,8 @@ def _closer_bound(system: System, miss: Floats, strength: Floats) -> tuple[Float
         rows.start,
         rows.source,
         rows.weight,
-        y,
+        loose.z,
+        loose.image,
         miss,
         system.alpha,
         strength,
@@ -124,6 +125,6 @@ def _closer_bound(system: System, miss: Floats, strength: Floats) -> tuple[Float
     )
     excess, smallest = float(totals[:, 0].max()), float(totals[:, 1].min())
     if not (excess < 0.9 and smallest >= 0.0):
-        return None, sweeps + 1
+        return None, loose.sweeps + 1
     above *= (1.0 + 4 * ROUNDING) / (1.0 - max(excess, 0.0))
-    return above, sweeps + 1
+    return above, loose.sweeps + 1

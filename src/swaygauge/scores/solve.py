@@ -11,14 +11,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from swaygauge.errors import NotConverged
-from swaygauge.graph import Rows
+from swaygauge.graph import Block, Rows
 from swaygauge.kernels import sweeping
 from swaygauge.kernels.threads import in_parts
 from swaygauge.records import Floats
 from swaygauge.scores.mixing import Mixer
 
 QUICK_LINKS = 4_000  # components up to this size are solved on the spot, one row after the other
-QUICK_SWEEPS = 40
+QUICK_SWEEPS = 120
 MOST_SWEEPS = 5_000
 PATIENCE = 40  # sweeps without progress after which only rounding can be in the way
 
@@ -32,20 +32,42 @@ class System:
     scale: Floats  # (n,) by position, or of length 0 for a scale of 1
 
 
-def solve(system: System, h: Floats, *, tolerance: float, start: Floats | None = None) -> tuple[Floats, int]:
-    """z (n,) by position with |residual| <= tolerance * h or as small as rounding allows, and the most sweeps taken.
+@dataclass(frozen=True, eq=False)
+class Solved:
+    """An approximate solution, not yet proven (see :mod:`proof`); arrays (n,) by position."""
 
-    Positions that are nobody's source are left out (their z is h). This is not yet proven: see :mod:`proof`. Raises
-    NotConverged when the iteration diverges or does not settle.
+    z: Floats  # positions that are nobody's source are left out
+    image: Floats  # h + gain * (row sums of z) where iteration has worked it out, else NaN
+    sweeps: int  # over the component that took most
+
+
+def solve(system: System, h: Floats, *, tolerance: float, start: Floats | None = None) -> Solved:
+    """Solve until |residual| <= tolerance * h, or as small as rounding allows.
+
+    Raises NotConverged when the iteration diverges or does not settle.
     """
     z = h.copy() if start is None else start.copy()
-    return z, carry_on(system, z, h, tolerance=tolerance, component=0)
+    image = np.full(len(z), np.nan)
+    return Solved(z, image, carry_on(system, z, h, tolerance=tolerance, image=image))
 
 
-def carry_on(system: System, z: Floats, h: Floats, *, tolerance: float, component: int) -> int:
-    """Solve for the components from ``component`` on, in place; what is before stays as it is. Returns sweeps."""
+def carry_on(
+    system: System,
+    z: Floats,
+    h: Floats,
+    *,
+    tolerance: float,
+    component: int = 0,
+    before: int | None = None,
+    image: Floats | None = None,
+) -> int:
+    """Solve for the components from ``component`` on, in place, up to ``before``; the others stay. Returns sweeps.
+
+    With ``image``, z stays one step behind on components that were iterated, and the step is written there.
+    """
     rows = system.rows
     end = int(np.searchsorted(rows.component_start, rows.sources))
+    end = end if before is None else min(end, before)
     sweeps = 1
     while component < end:
         component = sweeping.walk(
@@ -64,15 +86,17 @@ def carry_on(system: System, z: Floats, h: Floats, *, tolerance: float, componen
             QUICK_SWEEPS,
         )
         if component < end:
-            sweeps = max(sweeps, _settle(system, component, z, h, tolerance))
+            block = rows.block(component)
+            mapped, taken = _settle(system, block, z, h, tolerance)
+            (z if image is None else image)[block.low : block.high] = mapped
+            sweeps = max(sweeps, taken)
             component += 1
     return sweeps
 
 
-def _settle(system: System, component: int, z: Floats, h: Floats, tolerance: float) -> int:
-    """Accelerated fixed-point iteration inside one strong component."""
+def _settle(system: System, block: Block, z: Floats, h: Floats, tolerance: float) -> tuple[Floats, int]:
+    """Accelerated fixed-point iteration inside one strong component: the last image of z, and the sweeps it took."""
     rows, alpha, scale = system.rows, system.alpha, system.scale
-    block = rows.block(component)
     low, cuts = block.low, block.cuts
     own = z[low : block.high]
     f = np.empty(len(own))
@@ -80,7 +104,7 @@ def _settle(system: System, component: int, z: Floats, h: Floats, tolerance: flo
     unit = _unit_of(h[low : block.high], f)
     if unit is None:
         own[:] = 0.0
-        return 1
+        return own, 1
     mixer = Mixer(len(own), len(cuts) - 1)
     least, since = np.inf, 0
     for sweep in range(1, MOST_SWEEPS + 1):
@@ -108,8 +132,7 @@ def _settle(system: System, component: int, z: Floats, h: Floats, tolerance: flo
         since = since + 1 if worst > 0.7 * least else 0
         least = min(least, worst)
         if worst <= tolerance or (since >= PATIENCE and _is_rounding(worst, mixer.mapped[slot], unit)):
-            own[:] = mixer.mapped[slot]
-            return sweep
+            return mixer.mapped[slot], sweep
         if not worst < 1e200:
             break
         in_parts(sweeping.combine, cuts, mixer.mapped, mixer.weights(slot), own)
@@ -120,7 +143,7 @@ def _settle(system: System, component: int, z: Floats, h: Floats, tolerance: flo
 
 
 def _unit_of(h: Floats, f: Floats) -> Floats | None:
-    """What errors are measured in: h, or where that is 0 somewhere f kept off 0; None when there is nothing to solve."""
+    """What errors are measured in: h, or where that is 0 somewhere, f kept off 0; None when all is 0."""
     if float(h.min()) > 0.0:
         return h
     largest = float(f.max())

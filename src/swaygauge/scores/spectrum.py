@@ -10,6 +10,7 @@ radius exceeds the largest row sum or the largest column sum.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
@@ -24,28 +25,18 @@ from swaygauge.scores.solve import System, carry_on
 
 SMALL_LINKS = 20_000  # components up to this many links are bracketed in one compiled loop
 SMALL_SWEEPS = 60
-PATIENT_SWEEPS = 16  # power steps that are worth waiting for before the next Arnoldi run
-ROUNDS = 12  # Arnoldi runs at most; the bracket is proven whatever they achieve
-KRYLOV_STEPS = 20
+PATIENT_SWEEPS = 22  # power steps that are worth waiting for before the next Arnoldi run
+ROUNDS = 6  # Arnoldi runs at most; the bracket is proven whatever they achieve
+GAP = 1e-6  # relative width of the bracket that is aimed at
 
 
 @dataclass(frozen=True, eq=False)
 class Brackets:
-    """Per component that could hold lambda: its number and the proven bracket on its radius."""
+    """Per component that could hold lambda: its number and the proven bracket on its radius; upstream first."""
 
     component: Ints
     lower: Floats
     upper: Floats
-
-    @property
-    def best(self) -> int:
-        """Where the largest lower bound stands."""
-        return int(np.argmax(self.lower))
-
-    @property
-    def tied(self) -> Ints:
-        """Numbers of the components that no bound tells from the best, upstream first."""
-        return np.sort(self.component[self.upper >= self.lower.max()])
 
 
 @dataclass(frozen=True, eq=False)
@@ -54,10 +45,10 @@ class LeadingVectors:
 
     right: Floats
     left: Floats
-    component: int  # the component that right stands on; -1 when acyclic
+    component: int  # the most downstream component that attains lambda; -1 when acyclic
 
 
-def bound_lambda(graph: Graph, *, gap: float = 1e-6) -> SpectralBounds:
+def bound_lambda(graph: Graph, *, gap: float = GAP) -> SpectralBounds:
     """Proven bounds on the spectral radius of the links matrix; both exactly 0 when the network has no cycle.
 
     ``gap`` is the relative width that is aimed at. The bounds hold whether or not it is reached.
@@ -66,39 +57,57 @@ def bound_lambda(graph: Graph, *, gap: float = 1e-6) -> SpectralBounds:
     >>> bounds.lower <= 1.0 <= bounds.upper, round(bounds.upper - bounds.lower, 9)
     (True, 0.0)
     """
-    brackets = _brackets(graph.rows, gap)
+    brackets = _brackets(graph, gap)
     if len(brackets.component) == 0:
         return SpectralBounds(0.0, 0.0)
-    best = brackets.best
-    return SpectralBounds(float(brackets.lower[best]), float(brackets.upper.max()), int(brackets.component[best]))
+    return SpectralBounds(float(brackets.lower.max()), float(brackets.upper.max()), int(brackets.component[-1]))
+
+
+def leading_components(graph: Graph) -> Ints:
+    """Components that attain lambda, as far as bounds can tell, and reach no other such; upstream first.
+
+    Eigenvector centrality is above 0 on them and downstream of them, and nowhere else. Empty when acyclic.
+    """
+    return _last_in_line(graph.rows, _brackets(graph, GAP).component)
 
 
 def leading_vectors(graph: Graph, *, gap: float = 1e-9) -> LeadingVectors:
-    """The leading eigenvectors of the whole network.
+    """The leading eigenvectors of the whole network. Not proven; good for telling what carries lambda.
 
-    ``right`` (eigenvector centrality) is 0 except on a component that attains lambda and what it reaches; ``left`` is 0
-    except on one that attains it and what reaches it. Where several attain it, right stands on the last downstream and
-    left on the last upstream. Not proven; good for telling what carries lambda.
+    ``right`` (eigenvector centrality) is 0 except on components that attain lambda and what they reach; ``left`` is 0
+    except on those and what reaches them. Where one such component reaches another, right stands on the last of them
+    and left on the first. Components that tie side by side are given the same largest entry.
     """
-    brackets = _brackets(graph.rows, 1e-6)
-    if len(brackets.component) == 0:
+    tied = _brackets(graph, GAP).component
+    if len(tied) == 0:
         return LeadingVectors(np.zeros(graph.n), np.zeros(graph.n), -1)
-    tied = brackets.tied
-    right = _spread(graph.rows, int(tied[-1]), gap)
-    left = _spread(graph.turned, graph.component_count - 1 - int(tied[0]), gap)[::-1]
-    return LeadingVectors(right[graph.place], left[graph.place], int(tied[-1]))
+    left = _spread(graph.turned, graph.component_count - 1 - tied[::-1], gap)[::-1]
+    return LeadingVectors(leading_right(graph, gap=gap), left[graph.place], int(tied[-1]))
 
 
-def leading_right(graph: Graph, *, gap: float = 1e-9) -> tuple[Floats, int]:
-    """``right`` of :func:`leading_vectors` and the component it stands on, without the cost of ``left``."""
-    brackets = _brackets(graph.rows, 1e-6)
-    if len(brackets.component) == 0:
-        return np.zeros(graph.n), -1
-    component = int(brackets.tied[-1])
-    return _spread(graph.rows, component, gap)[graph.place], component
+def leading_right(graph: Graph, *, gap: float = 1e-9) -> Floats:
+    """``right`` of :func:`leading_vectors`, without the cost of ``left``."""
+    tied = _brackets(graph, GAP).component
+    return _spread(graph.rows, tied, gap)[graph.place] if len(tied) else np.zeros(graph.n)
 
 
-def _brackets(rows: Rows, gap: float) -> Brackets:
+def _last_in_line(rows: Rows, components: Ints) -> Ints:
+    count = len(rows.component_start) - 1
+    chosen, last = np.zeros(count, np.bool_), np.zeros(count, np.bool_)
+    chosen[components] = True
+    spreading.last_in_line(rows.start, rows.source, rows.component_start, chosen, last)
+    return np.flatnonzero(last).astype(np.int64)
+
+
+def _brackets(graph: Graph, gap: float) -> Brackets:
+    """The brackets of a graph, kept as long as the graph is: alpha, refusals, vectors and leaks all ask for them."""
+    known = _KNOWN.setdefault(graph, {})
+    if gap not in known:
+        known[gap] = _find_brackets(graph.rows, gap)
+    return known[gap]
+
+
+def _find_brackets(rows: Rows, gap: float) -> Brackets:
     size = np.diff(rows.component_start)
     loops, loop_radius = _self_links(rows, size)
     several = np.flatnonzero(size > 1)
@@ -110,7 +119,7 @@ def _brackets(rows: Rows, gap: float) -> Brackets:
     first, last = rows.component_start[several], rows.component_start[several + 1]
     big = np.flatnonzero(rows.start[last] - rows.start[first] > SMALL_LINKS)
     for k in big:
-        if ceiling[k] > best:
+        if ceiling[k] >= best:
             lower[k], upper[k], _ = _bracket(rows, rows.block(int(several[k])), gap, enough=best)
             best = max(best, lower[k])
     best = spreading.bracket_small(
@@ -128,15 +137,16 @@ def _brackets(rows: Rows, gap: float) -> Brackets:
         lower,
         upper,
     )
-    for k in np.flatnonzero((upper > best) & (upper - lower > gap * lower)):
-        if upper[k] > best:
+    for k in np.flatnonzero((upper >= best) & (upper - lower > gap * lower)):
+        if upper[k] >= best:
             closer = _bracket(rows, rows.block(int(several[k])), gap, enough=best)
             lower[k], upper[k] = max(lower[k], closer[0]), min(upper[k], closer[1])
             best = max(best, lower[k])
     every = Brackets(
         np.concatenate((several, loops)), np.concatenate((lower, loop_radius)), np.concatenate((upper, loop_radius))
     )
-    keep = every.upper >= best
+    keep = np.flatnonzero(every.upper >= best)
+    keep = keep[np.argsort(every.component[keep])]
     return Brackets(every.component[keep], every.lower[keep], every.upper[keep])
 
 
@@ -198,7 +208,7 @@ def _bracket(rows: Rows, block: Block, gap: float, *, enough: float) -> tuple[fl
             if size > DENSE and step >= 3 and not _worth_waiting(rate, (upper - lower) / max(lower, 1e-300), gap, step):
                 break
         if turn < ROUNDS:
-            v = improved(rows, block, v, steps=KRYLOV_STEPS)
+            v = improved(rows, block, v)
             if size <= DENSE and turn > 1:
                 break
     return lower, upper, v
@@ -217,44 +227,48 @@ def _first_guess(rows: Rows, block: Block) -> Floats:
         return np.ones(size)
     height = np.zeros(size)
     spreading.log_cycle(rows.start, rows.source, rows.weight, block.low, block.high, height)
-    guess: Floats = np.maximum(np.exp(height - height.max()), 1e-280)
+    guess: Floats = np.exp(np.clip(height - 0.5 * (height.max() + height.min()), -600.0, 600.0))
     return guess
 
 
-def _spread(rows: Rows, component: int, gap: float) -> Floats:
-    """The leading eigenvector by position: on one component, 0 upstream of it, carried on downstream."""
-    low, high = (int(at) for at in rows.component_start[component : component + 2])
-    own = np.ones(1)
-    if high - low > 1:
-        _, upper, own = _bracket(rows, rows.block(component), gap, enough=0.0)
-    else:
-        upper = float(rows.weight[rows.start[high] - 1]) if len(rows.weight) else 1.0
-    vector = np.zeros(rows.n)
-    vector[low:high] = own
-    alpha = 1.0 / upper
-    carry_on(System(rows, alpha, NO_WEIGHT), vector, np.zeros(rows.n), tolerance=1e-12, component=component + 1)
-    rest = rows.n - rows.sources
-    if rest:
-        f, nothing = np.empty(rest), np.zeros(rows.n)
-        cuts = np.array([0, rest], np.int64)
-        stop = rows.start[rows.sources + 1 :].copy()
+def _spread(rows: Rows, tied: Ints, gap: float) -> Floats:
+    """The leading eigenvector by position: on the last in line of the tied components, carried on downstream."""
+    vector, nothing = np.zeros(rows.n), np.zeros(rows.n)
+    radius = 0.0
+    for component in _last_in_line(rows, tied):
+        low, high = (int(at) for at in rows.component_start[component : component + 2])
+        if high - low > 1:
+            _, upper, own = _bracket(rows, rows.block(int(component)), gap, enough=0.0)
+            vector[low:high] = own / own.max()
+        else:
+            upper = float(rows.weight[rows.start[high] - 1]) if len(rows.weight) else 1.0
+            vector[low] = 1.0
+        radius = max(radius, upper)
+    system = System(rows, 1.0 / radius, NO_WEIGHT)
+    for component, end in zip(tied.tolist(), [*tied[1:].tolist(), None], strict=True):  # the tied keep what they have
+        carry_on(system, vector, nothing, tolerance=1e-12, component=component + 1, before=end)
+    first_end = int(rows.component_start[tied[-1] + 1])
+    low = max(rows.sources, first_end)  # from here on nobody is a source, and nobody is a leading component
+    if low < rows.n:
         in_parts(
             sweeping.sum_outside,
-            cuts,
+            np.array([0, rows.n - low], np.int64),
             rows.start,
-            stop,
+            rows.start[low + 1 :].copy(),
             rows.source,
             rows.weight,
             vector,
             nothing,
-            alpha,
+            system.alpha,
             NO_WEIGHT,
-            rows.sources,
-            f,
+            low,
+            vector[low:],
         )
-        vector[rows.sources :] = np.where(np.arange(rows.sources, rows.n) >= high, f, vector[rows.sources :])
     top = float(vector.max())
     if not (0.0 < top < np.inf):
         raise ScoreError("the leading eigenvector left the range of floating-point numbers; scale the weights.")
     vector /= top
     return vector
+
+
+_KNOWN: WeakKeyDictionary[Graph, dict[float, Brackets]] = WeakKeyDictionary()

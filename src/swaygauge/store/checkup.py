@@ -127,4 +127,4 @@ def _leftovers(store: Store, network: str) -> Iterator[Finding]:
         size = sum(path.stat().st_size for path in files)
         example = files[0].relative_to(store.workspace)
         what = f"{network}: {len(files)} files that no row names ({size} bytes), {example} among them."
-        yield Finding("note", None, what, "Nothing to do: the next published night removes those older than an hour.")
+        yield Finding("note", None, what, "Nothing to do: the next run removes those older than an hour.")

@@ -15,6 +15,7 @@ RESERVED: Final = frozenset({"prefect"})  # other folders of a workspace
 
 CATALOG: Final = "catalog.sqlite"
 NAMES: Final = "names"  # folder of the name table inside a network
+STUDIES: Final = "studies"  # folder of what people asked to be studied; no night rests on it
 SCORES: Final = "scores"  # the kinds of part that the reading side knows
 MOVES: Final = "moves"
 

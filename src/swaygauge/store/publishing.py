@@ -17,6 +17,7 @@ from swaygauge.records import Alert, RuleResult
 from swaygauge.store import queries
 from swaygauge.store.catalog import Catalog, asking, delete_rows, insert_rows
 from swaygauge.store.digest import night_digest
+from swaygauge.store.layout import STUDIES
 from swaygauge.store.rows import AlertRow, AliasRow, CheckRow, FactRow, NightRow
 from swaygauge.store.schema import NIGHT
 
@@ -122,7 +123,9 @@ def alert_rows(
 
 def orphans(catalog: Catalog, workspace: Path, network: str) -> list[Path]:
     """Files of the network's folder that no row names: left by a killed run, or replaced since. Sorted."""
-    there = [path for path in (workspace / network).rglob("*") if path.is_file() and path.name != ".lock"]
+    folder = workspace / network
+    there = [path for path in folder.rglob("*") if path.is_file() and path.name != ".lock"]
+    there = [path for path in there if path.parent != folder / STUDIES or path.name.startswith(".")]
     # staged before live: a night that is published in between moves from the first list to the second
     named = {part.path for staged in (True, False) for part in queries.all_parts(catalog.ask, network, staged=staged)}
     named |= {part.path for part in queries.name_parts(catalog.ask, network)}

@@ -115,10 +115,9 @@ class Store:
 
         row: its ``version`` is that of the row it replaces, 0 for a new night. node_names: node -> the name shown, for
         every alerted node. sentences: alert key -> its sentence. aliases: the network's whole table; None leaves it.
-        Raises Busy when the night was published meanwhile. Files that an earlier publish made superfluous are removed.
+        Raises Busy when the night was published meanwhile. Files that it makes superfluous stay until :meth:`sweep`.
         """
         self._add_network(row.network)
-        publishing.sweep(self.catalog, self.workspace, row.network)
         return publishing.publish(
             self.catalog,
             row,
@@ -126,6 +125,10 @@ class Store:
             alerts=publishing.alert_rows(row, alerts, node_names or {}, sentences or {}),
             aliases=aliases,
         )
+
+    def sweep(self, network: str) -> int:
+        """Remove the network's files that no row has named for an hour; how many."""
+        return publishing.sweep(self.catalog, self.workspace, check_name(network))
 
     # ---- reading back
 

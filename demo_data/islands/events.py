@@ -248,7 +248,7 @@ def ring(count: int, core: int) -> Event:
 
 
 def mutual_ring(count: int, places: tuple[int, int]) -> Event:
-    """``count`` existing sites all link to each other on one night; too few to move lambda."""
+    """``count`` existing sites all link to each other on one night; lambda jumps where it was below ``count`` - 1."""
 
     def happen(stage: Stage) -> Planted:
         members = stage.pick(*places, count=count, where=stage.world.out_degree() >= 1)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 import shutil
 import time
+from datetime import timedelta
 from pathlib import Path
 from typing import Annotated
 
@@ -19,6 +20,7 @@ from swaygauge.errors import ConfigError
 from swaygauge.visible import visible
 
 WORKSPACE = "demo"  # the only folder name that the demo ever empties
+LATE = 2  # days that a late file is behind
 PATHS = re.compile(r'^(folder|aliases|workspace) = "(.+)"$', re.MULTILINE)
 
 
@@ -66,32 +68,41 @@ def demo(
     from swaygauge.readers.nights import find_snapshots
 
     clock = time.perf_counter()
-    nights = list(find_snapshots(data, load_settings(place.file).snapshots.pattern).nights.items())
-    late = sorted((data / "late").glob("*")) if (data / "late").is_dir() else []
+    pattern = load_settings(place.file).snapshots.pattern
+    nights = find_snapshots(data, pattern).nights
+    late = find_snapshots(data / "late", pattern).nights if (data / "late").is_dir() else {}
+    first, last = min(nights), max(nights)
     incoming = place.workspace / ".incoming"
     say_if_compiling()
     say(f"{place.title}: starting the flows (the first start makes a database and takes longer) ...")
     from swaygauge.flows.start import run_backfill, run_nightly
 
-    _deliver([path for _, path in nights[:-1]], incoming)
-    say(f"backfill: {len(nights) - 1} nights, {nights[0][0]} to {nights[-2][0]}")
-    done = run_backfill(place.file, None, None, again=False, tell=tell)
-    _deliver([nights[-1][1], *late], incoming)
-    news = f", and {late[0].name} arrives late: what rests on it is replayed" if late else ""
-    say(f"night: {nights[-1][0]} arrives{news}")
+    told_late = max(late, default=first) + timedelta(days=LATE)
+    early = [path for night, path in nights.items() if late and night <= told_late and night < last]
+    done = []
+    if early:
+        _deliver(early, incoming)
+        say(f"backfill: the first {len(early)} nights, from {first}")
+        done += run_backfill(place.file, None, None, again=False, tell=tell)
+    _deliver([*late.values(), *(path for night, path in nights.items() if night < last)], incoming)
+    news = "".join(f" {path.name} arrives late: what rests on it is replayed." for path in late.values())
+    say(f"backfill: up to the last night but one.{news}")
+    done += run_backfill(place.file, None, None, again=False, tell=tell)
+    _deliver([nights[last]], incoming)
+    say(f"night: {last} arrives")
     done += run_nightly(place.file, None, tell)
     say(f"{len(done)} night runs in {time.perf_counter() - clock:.0f} s")
     say()
     reader = reader_of(place)
-    for line in brief_lines(place, reader, reader.night(place.network, nights[-1][0])):
+    for line in brief_lines(place, reader, reader.night(place.network, last)):
         say(line)
     say()
-    told = reader.alerts(place.network, first=nights[-1][0], last=nights[-1][0])
+    told = reader.alerts(place.network, first=last, last=last)
     name = next((visible(alert.node_name) for alert in told if alert.node >= 0), "NAME")
     say("What to type next (first: source .venv/bin/activate):")
     for line in (
         f"swaygauge trace {place.network} {name} --score fairshare",
-        f"swaygauge alerts {place.network} --since {nights[0][0]}",
+        f"swaygauge alerts {place.network} --since {first}",
         f"swaygauge standing {place.network}",
         f"swaygauge nights {place.network}",
     ):

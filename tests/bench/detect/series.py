@@ -248,7 +248,7 @@ class _Truth:
         """Kinds of alert about an event's nodes, and after how many accepted nights the first came."""
         ways = {"rose": ("rose", "came"), "fell": ("fell", "left"), "left": ("fell", "left")}.get(planted.direction)
         kinds: list[str] = []
-        delay, waited = -1, 0
+        delay = -1
         last = nights.stop
         for number in range(nights.start, len(told)):
             if number >= last:
@@ -263,7 +263,6 @@ class _Truth:
             if about and delay < 0:
                 delay = number - planted.night
             kinds += about
-            waited += 1
         return tuple(dict.fromkeys(kinds)), delay
 
 

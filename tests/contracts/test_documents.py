@@ -71,6 +71,12 @@ def test_the_readme_opens_with_the_job_and_the_two_commands() -> None:
     assert "make test" in ci
 
 
+def test_the_notebook_example_runs(capsys: pytest.CaptureFixture[str]) -> None:
+    code = README.split("```python\n", 1)[1].split("```", 1)[0]
+    exec(compile(code, "README.md", "exec"), {})
+    assert capsys.readouterr().out.startswith("1 bob ")
+
+
 def test_nothing_names_an_index_address() -> None:
     for line in (ROOT / "config" / "constraints.txt").read_text().splitlines():
         assert re.fullmatch(r"[A-Za-z0-9_.-]+==[A-Za-z0-9_.!+-]+", line), line

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from datetime import date
 from pathlib import Path
-from typing import Any
+from typing import Any, Final
 
 from prefect import task
 from prefect.tasks import exponential_backoff
@@ -22,29 +22,22 @@ def _worth_retrying(_task: Any, _run: Any, state: Any) -> bool:
     return False
 
 
-@task(
-    name="stage",
-    task_run_name="{stage} {night}",
-    retries=3,
-    retry_delay_seconds=exponential_backoff(backoff_factor=2),
-    retry_jitter_factor=0.5,
-    retry_condition_fn=_worth_retrying,
-    persist_result=False,
-)
+RETRYING: Final[dict[str, Any]] = {
+    "retries": 3,
+    "retry_delay_seconds": exponential_backoff(backoff_factor=2),
+    "retry_jitter_factor": 0.5,
+    "retry_condition_fn": _worth_retrying,
+    "persist_result": False,
+}
+
+
+@task(name="stage", task_run_name="{stage} {night}", **RETRYING)
 def stage_task(config: str, night: date, stage: str) -> StageResult:
     """One stage of one night: load from the store, compute, save to the store."""
     return run_stage(work_for(Path(config)), night, stage)
 
 
-@task(
-    name="replay",
-    task_run_name="replay {night}",
-    retries=2,
-    retry_delay_seconds=exponential_backoff(backoff_factor=2),
-    retry_jitter_factor=0.5,
-    retry_condition_fn=_worth_retrying,
-    persist_result=False,
-)
+@task(name="replay", task_run_name="replay {night}", **RETRYING)
 def replay_task(config: str, night: date) -> RunReport:
     """All stages of one historical night."""
     return run_night(work_for(Path(config)), night)

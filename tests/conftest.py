@@ -7,7 +7,9 @@ from collections.abc import Callable, Iterable
 from pathlib import Path
 
 import pytest
-from tests_support import MiniWorld, write_settings
+from tests_support import MiniWorld, snapshot_of, write_settings
+
+from swaygauge.records import Snapshot
 
 os.environ["GX_ANALYTICS_ENABLED"] = "false"
 os.environ["DO_NOT_TRACK"] = "1"
@@ -25,3 +27,8 @@ def mini(tmp_path: Path) -> Callable[..., Path]:
         return file
 
     return make
+
+
+@pytest.fixture(scope="session", name="snapshot_of")
+def _snapshot_of() -> Callable[..., Snapshot]:
+    return snapshot_of

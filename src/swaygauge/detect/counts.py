@@ -19,7 +19,6 @@ from swaygauge.records import Flags, Floats, Ints
 KAPPA_RANGE: Final = (0.05, 50.0)
 KAPPA_AT_FIRST: Final = 1.0
 SQUARES_CUT: Final = 0.999  # squares beyond this quantile count as the quantile when kappa is measured
-SETTLING_ROUNDS: Final = 50
 LEAST_MEAN: Final = 1e-12  # where nothing at all was due, anything is surprising, but finitely so
 
 
@@ -71,7 +70,8 @@ def due_by_standing(count: Ints, standing: Floats) -> Floats:
     """(n,) tonight's total shared out by standing (n,) >= 0.
 
     A single burst must not raise what is expected of everyone, so a node adds to the total at most 3 + 3 times its own
-    due, solved for by repetition.
+    due. That is the largest total that this rule gives back. The rule is concave and piecewise linear in the total, so
+    Newton's steps from above fall to it and end after at most one per node.
     """
     whole = float(standing.sum())
     if whole == 0.0:
@@ -79,8 +79,10 @@ def due_by_standing(count: Ints, standing: Floats) -> Floats:
     some = np.flatnonzero(count)
     seen, share = count[some].astype(np.float64), standing[some] / whole
     total = float(seen.sum())
-    for _ in range(SETTLING_ROUNDS):
-        settled = float(np.minimum(seen, 3.0 + 3.0 * total * share).sum())
+    for _ in range(len(some)):
+        over = 3.0 + 3.0 * total * share < seen
+        slope = 3.0 * float(share[over].sum())
+        settled = (float(seen[~over].sum()) + 3.0 * int(over.sum())) / (1.0 - slope) if slope < 1.0 else total
         if total - settled <= 1e-12 * total:
             break
         total = settled

@@ -26,7 +26,7 @@ def links_of(seed: int, n: int = 60, m: int = 260) -> Links:
 
 
 def solve(score: Score, graph: Graph, **named: object) -> Solution:
-    return score.solve(graph, options=score.options(), alpha=0.02, **named)  # type: ignore[arg-type]
+    return score.solve(graph, options=score.options(), alpha=0.02, **named)  # type: ignore[arg-type]  # each score has its own options
 
 
 @EVERY

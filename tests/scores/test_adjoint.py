@@ -74,4 +74,4 @@ def test_the_residual_is_exactly_what_is_unaccounted() -> None:
 def test_what_is_refused(named: dict[str, object], message: str) -> None:
     usual: dict[str, object] = {"score": "katz", "right": [0.0, 0.0, 1.0], "values": None}
     with pytest.raises(ScoreError, match=message):
-        solve_adjoint(Graph(3, [0, 1], [1, 2]), alpha=0.5, **(usual | named))  # type: ignore[arg-type]
+        solve_adjoint(Graph(3, [0, 1], [1, 2]), alpha=0.5, **(usual | named))  # type: ignore[arg-type]  # wrong types on purpose

@@ -106,4 +106,4 @@ def test_long_rows_are_sorted() -> None:
 )
 def test_what_is_refused(n: int, source: object, target: object, weight: object, message: str) -> None:
     with pytest.raises(InputError, match=message):
-        Graph(n, source, target, weight=weight)  # type: ignore[arg-type]
+        Graph(n, source, target, weight=weight)  # type: ignore[arg-type]  # wrong types on purpose

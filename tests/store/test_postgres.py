@@ -102,7 +102,7 @@ def url(server, request):
     name = "".join(char if char.isalnum() else "_" for char in request.node.name.lower())[:60]
     plain = server.replace("+psycopg", "")
     with psycopg.connect(f"{plain}/postgres", autocommit=True) as connection:
-        connection.execute(f'CREATE DATABASE "{name}"')  # type: ignore[arg-type]
+        connection.execute(f'CREATE DATABASE "{name}"')  # type: ignore[arg-type]  # not a literal: a name made here
     return f"{server}/{name}"
 
 

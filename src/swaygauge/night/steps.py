@@ -86,10 +86,13 @@ def graph_of(book: LinkBook) -> Scored:
     """The graph of the links in effect."""
     on = book.in_effect
     source, target = book.source[on], book.target[on]
-    ids = np.unique(np.concatenate([source, target])).astype(np.int32)
-    place = np.searchsorted(ids, source).astype(np.int32), np.searchsorted(ids, target).astype(np.int32)
+    there = np.zeros(int(max(source.max(initial=-1), target.max(initial=-1))) + 1, np.bool_)
+    there[source] = True
+    there[target] = True
+    ids = np.flatnonzero(there).astype(np.int32)
+    place = np.cumsum(there, dtype=np.int32) - 1
     weight = None if book.weight is None else book.weight[on]
-    return Scored(frozen(ids), Graph(len(ids), place[0], place[1], weight=weight))
+    return Scored(frozen(ids), Graph(len(ids), place[source], place[target], weight=weight))
 
 
 def era_pin(
